@@ -1,0 +1,13 @@
+//! Laplace's equation around two tilted plates, and what follows from it: charge, force and torque.
+//!
+//! Inside, the unit of length is the largest side of a plate, the unit of potential one volt and the permittivity
+//! one; [`assess()`] puts the SI units back.
+
+mod assess;
+mod error;
+
+pub use assess::{
+    assess, hinge_offset_m, Assessment, Components, Connection, Estimate, Factor, Factors, Hinge, Ideal,
+    LevelReport, Params, Progress, Question,
+};
+pub use error::Error;
