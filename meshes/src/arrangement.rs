@@ -118,6 +118,19 @@ pub enum ArrangementError {
         /// Its value in degrees.
         degrees: f64,
     },
+    /// A cross-section has neither roll nor a shift along y.
+    #[error(
+        "a cross-section (per metre of width) has no {what}; set it to 0, or solve the plates in three dimensions"
+    )]
+    NotInSection {
+        /// Roll or shift along y.
+        what: &'static str,
+    },
+    /// Insulating walls stand along the edges of both plates.
+    #[error(
+        "insulating walls along the plate edges need two equal plates without shift and without thickness"
+    )]
+    Walls,
     /// Gap and plate size are too different.
     #[error(
         "the gap ({gap_m:e} m) is {ratio:.3e} of the largest plate side ({size_m:e} m); \
@@ -221,6 +234,24 @@ impl Arrangement {
         }
     }
 
+    /// Height of the upper plate's plane above the point of the lower plate that lies under a corner when the
+    /// plates are parallel, for the corner where it is least. The fitted grid folds where this is not positive.
+    fn fold_height_m(&self) -> f64 {
+        let [sx, sy] = self.pose.slopes();
+        let reach = (sx * self.upper.length_m / 2.0).abs() + (sy * self.half_width_m()).abs();
+        self.pose.gap_m - reach
+    }
+
+    /// The error for a pose in which the plates are free of each other but the grid folds.
+    pub fn folded(&self) -> ArrangementError {
+        let (edge, clearance_m) = self.lowest_edge();
+        ArrangementError::Folded {
+            edge,
+            clearance_m,
+            needed_m: self.pose.gap_m - self.fold_height_m().min(0.0),
+        }
+    }
+
     fn half_width_m(&self) -> f64 {
         match self.dimensions {
             Dimensions::Two => 0.0,
@@ -291,6 +322,18 @@ impl Arrangement {
                 return Err(ArrangementError::Shift { axis, value_m, most_m: 2.0 * size_m });
             }
         }
+        if !three {
+            for (what, value) in [("roll", self.pose.roll_rad), ("shift along y", self.pose.shift_m[1])] {
+                if value != 0.0 {
+                    return Err(ArrangementError::NotInSection { what });
+                }
+            }
+        }
+        if self.surroundings == Surroundings::InsulatedWalls
+            && (self.lower != self.upper || self.pose.shift_m != [0.0; 2] || self.lower.thickness_m != 0.0)
+        {
+            return Err(ArrangementError::Walls);
+        }
         let least_m = self.sides().into_iter().fold(f64::INFINITY, f64::min);
         if size_m > ASPECT_LIMIT * least_m {
             return Err(ArrangementError::Aspect { least_m, most_m: size_m });
@@ -302,6 +345,9 @@ impl Arrangement {
         let (edge, height) = self.lowest_edge();
         if height <= 0.0 {
             return Err(ArrangementError::Touching { edge, depth_m: -height, needed_m: gap_m - height });
+        }
+        if self.fold_height_m() <= 0.0 {
+            return Err(self.folded());
         }
         Ok(())
     }

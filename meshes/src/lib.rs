@@ -7,9 +7,15 @@
 //! the hinge axis; z up. The lower plate is fixed, its facing surface in z = 0, centred at the origin.
 
 mod arrangement;
+mod axis;
+mod grid;
 mod plate;
 mod pose;
+mod stencil;
 
 pub use arrangement::{Arrangement, ArrangementError, Dimensions, EdgeGaps, Rectangle, Surroundings};
+pub use axis::{Axis, End, FAR_DISTANCE};
+pub use grid::{Carry, Grid, NodeBox};
 pub use plate::Plate;
 pub use pose::{dot, Matrix3, Pose, Vector3};
+pub use stencil::Stencil;

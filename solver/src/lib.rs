@@ -4,10 +4,23 @@
 //! one; [`assess()`] puts the SI units back.
 
 mod assess;
+pub mod cg;
+mod corner;
 mod error;
+mod field;
+mod hold;
+mod level;
+mod modes;
+mod operator;
+mod separable;
+mod wrench;
 
 pub use assess::{
     assess, hinge_offset_m, Assessment, Components, Connection, Estimate, Factor, Factors, Hinge, Ideal,
     LevelReport, Params, Progress, Question,
 };
 pub use error::Error;
+pub use field::Field;
+pub use level::{Level, LevelParams};
+pub use operator::{Matrix, Operator};
+pub use wrench::{Wrench, WrenchForm};

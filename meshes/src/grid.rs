@@ -1,0 +1,260 @@
+//! The fitted grid: a tensor product of graded axes, bent so that the tilted plate lies on grid planes.
+//!
+//! In reference coordinates both plates are axis-parallel boxes. A node at xi stands in the room at
+//! X = xi + B (R - I) P, where P is the point of the upper plate nearest to xi (relative to the plate's centre) and
+//! the blend B is 0 on and below the lower plate, rises linearly across the gap, is 1 through the upper plate and
+//! falls linearly to 0 at the far boundary. The plate moves rigidly and nothing becomes a staircase.
+
+use crate::{Arrangement, ArrangementError, Axis, Dimensions, Matrix3, Pose, Surroundings, Vector3};
+
+/// Nodes of a plate, first and last (both included) along each axis.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct NodeBox {
+    /// Along x.
+    pub i: [usize; 2],
+    /// Along y.
+    pub j: [usize; 2],
+    /// Along z.
+    pub k: [usize; 2],
+}
+
+impl NodeBox {
+    /// Whether a node belongs to the plate.
+    pub fn contains(&self, i: usize, j: usize, k: usize) -> bool {
+        let within = |r: [usize; 2], v: usize| r[0] <= v && v <= r[1];
+        within(self.i, i) && within(self.j, j) && within(self.k, k)
+    }
+}
+
+/// How a rigid motion of one plate is spread over the grid: each node follows the plate point nearest to it, with
+/// a weight that is 1 on the plate and 0 on the other plate and at the far boundary. It serves twice: it bends the
+/// grid to the pose, and it is the virtual displacement field of force and torque.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Carry {
+    /// Weight B of each z node.
+    pub blend: Vec<f64>,
+    /// Plate point nearest to a node, relative to the centre of the facing surface, axis by axis.
+    pub point: [Vec<f64>; 3],
+    /// Rotation from the plate's own directions to those of the room.
+    pub rotation: Matrix3,
+}
+
+impl Carry {
+    /// Weight times the lever arm of a node (from the centre of the plate's facing surface, in the room's directions).
+    pub fn lever(&self, i: usize, j: usize, k: usize) -> Vector3 {
+        let p = [self.point[0][i], self.point[1][j], self.point[2][k]];
+        self.rotation.map(|r| self.blend[k] * crate::dot(r, p))
+    }
+}
+
+/// A fitted grid of level q; lengths in units of the arrangement's size.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Grid {
+    /// Level of the family.
+    pub q: usize,
+    /// Axes x, y, z in reference coordinates.
+    pub axes: [Axis; 3],
+    /// Nodes of the lower plate.
+    pub lower: NodeBox,
+    /// Nodes of the upper plate.
+    pub upper: NodeBox,
+    /// Motion of the upper plate; it also bends the grid.
+    pub upper_carry: Carry,
+    /// Motion of the lower plate.
+    pub lower_carry: Carry,
+    /// Whether the grid is the half at y > 0 of a symmetric arrangement.
+    pub half: bool,
+}
+
+/// A plate in reference coordinates, in units of the size.
+struct Body {
+    /// From and to along x, y, z.
+    span: [[f64; 2]; 3],
+    /// Centre of the facing surface.
+    centre: Vector3,
+}
+
+impl Body {
+    fn points(&self, axes: &[Axis; 3]) -> [Vec<f64>; 3] {
+        [0, 1, 2].map(|d| {
+            let [from, to] = self.span[d];
+            axes[d].nodes.iter().map(|x| x.clamp(from, to) - self.centre[d]).collect()
+        })
+    }
+
+    fn nodes(&self, axes: &[Axis; 3]) -> NodeBox {
+        let [i, j, k] = [0, 1, 2].map(|d| self.span[d].map(|x| axes[d].nearest(x)));
+        NodeBox { i, j, k }
+    }
+}
+
+impl Grid {
+    /// The grid of level `q` (1, 2, 3, ...) for an arrangement.
+    ///
+    /// # Errors
+    /// What [`Arrangement::check`] finds wrong.
+    pub fn new(arrangement: &Arrangement, q: usize) -> Result<Grid, ArrangementError> {
+        arrangement.check()?;
+        let size = arrangement.size_m();
+        let three = arrangement.dimensions == Dimensions::Three;
+        let (lower, upper, pose) = (&arrangement.lower, &arrangement.upper, &arrangement.pose);
+        let [dx, dy] = pose.shift_m.map(|s| s / size);
+        let gap = pose.gap_m / size;
+        let span =
+            |centre: f64, extent_m: f64| [centre - extent_m / size / 2.0, centre + extent_m / size / 2.0];
+        let slab = [-0.5, 0.5];
+        let thickness = [lower, upper].map(|p| p.thickness_m / size);
+        let bodies = [
+            Body {
+                span: [
+                    span(0.0, lower.length_m),
+                    if three { span(0.0, lower.width_m) } else { slab },
+                    [-thickness[0], 0.0],
+                ],
+                centre: [0.0; 3],
+            },
+            Body {
+                span: [
+                    span(dx, upper.length_m),
+                    if three { span(dy, upper.width_m) } else { slab },
+                    [gap, gap + thickness[1]],
+                ],
+                centre: [dx, dy, gap],
+            },
+        ];
+        let half = arrangement.symmetric_in_y();
+        let axes = match arrangement.surroundings {
+            Surroundings::Open => {
+                let edges = |d: usize| [bodies[0].span[d], bodies[1].span[d]].concat();
+                [
+                    Axis::lateral(&edges(0), q, false),
+                    if three { Axis::lateral(&edges(1), q, half) } else { Axis::slab() },
+                    Axis::vertical(thickness, gap, q),
+                ]
+            }
+            Surroundings::InsulatedWalls => {
+                let walled = |d: usize| {
+                    let from = if d == 1 && half { 0.0 } else { bodies[0].span[d][0] };
+                    Axis::walled(from, bodies[0].span[d][1], q)
+                };
+                [walled(0), if three { walled(1) } else { Axis::slab() }, Axis::gap_alone(gap, q)]
+            }
+        };
+        let [mut lower_box, mut upper_box] = [0, 1].map(|b| bodies[b].nodes(&axes));
+        if half {
+            // The nearest node to a negative edge is the one on the symmetry plane.
+            (lower_box.j[0], upper_box.j[0]) = (0, 0);
+        }
+        let z = &axes[2].nodes;
+        let ramp = |z: f64, from: f64, to: f64| ((z - from) / (to - from)).clamp(0.0, 1.0);
+        let far = [z[0], z[z.len() - 1]];
+        let fall = |z: f64, from: f64, to: f64| if to == from { 1.0 } else { 1.0 - ramp(z, from, to) };
+        let upper_blend =
+            z.iter().map(|&z| ramp(z, 0.0, gap) * fall(z, bodies[1].span[2][1], far[1])).collect();
+        let lower_blend =
+            z.iter().map(|&z| fall(z, 0.0, gap) * fall(z, bodies[0].span[2][0], far[0])).collect();
+        let level = Pose { gap_m: 0.0, tilt_rad: 0.0, roll_rad: 0.0, shift_m: [0.0; 2] };
+        let [lower_points, upper_points] = [0, 1].map(|b| bodies[b].points(&axes));
+        Ok(Grid {
+            q,
+            lower: lower_box,
+            upper: upper_box,
+            lower_carry: Carry { blend: lower_blend, point: lower_points, rotation: level.rotation() },
+            upper_carry: Carry { blend: upper_blend, point: upper_points, rotation: pose.rotation() },
+            half,
+            axes,
+        })
+    }
+
+    /// Nodes along x, y, z.
+    pub fn shape(&self) -> [usize; 3] {
+        [0, 1, 2].map(|d| self.axes[d].len())
+    }
+
+    /// Number of nodes.
+    pub fn nodes(&self) -> usize {
+        self.shape().iter().product()
+    }
+
+    /// Number of a node: z runs fastest, x slowest.
+    pub fn index(&self, i: usize, j: usize, k: usize) -> usize {
+        (i * self.axes[1].len() + j) * self.axes[2].len() + k
+    }
+
+    /// Where a node stands in the room.
+    pub fn position(&self, i: usize, j: usize, k: usize) -> Vector3 {
+        let at = [self.axes[0].nodes[i], self.axes[1].nodes[j], self.axes[2].nodes[k]];
+        let carry = &self.upper_carry;
+        let blend = carry.blend[k];
+        if blend == 0.0 {
+            return at;
+        }
+        let lever = carry.lever(i, j, k);
+        let point = [carry.point[0][i], carry.point[1][j], carry.point[2][k]];
+        [0, 1, 2].map(|d| at[d] + (lever[d] - blend * point[d]))
+    }
+
+    /// What a quantity of the grid has to be multiplied with to be that of the whole arrangement.
+    pub fn multiplicity(&self) -> f64 {
+        if self.half {
+            2.0
+        } else {
+            1.0
+        }
+    }
+
+    /// The factor by which the widest cell exceeds the narrowest, over all axes: the worst aspect ratio.
+    pub fn worst_aspect(&self) -> f64 {
+        let cells: Vec<f64> = self.axes.iter().flat_map(|a| a.cells()).collect();
+        cells.iter().copied().fold(0.0, f64::max) / cells.iter().copied().fold(f64::INFINITY, f64::min)
+    }
+}
+
+impl std::fmt::Display for Grid {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        let [nx, ny, nz] = self.shape();
+        let half = if self.half { " (half, mirrored at y = 0)" } else { "" };
+        let (nodes, aspect) = (self.nodes(), self.worst_aspect());
+        write!(f, "level {}: {nx} x {ny} x {nz} = {nodes} nodes{half}, worst aspect {aspect:.0}", self.q)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::Plate;
+
+    #[test]
+    fn the_plate_is_rigid_and_its_edges_are_grid_lines() {
+        let arrangement = Arrangement {
+            lower: Plate { length_m: 0.2, width_m: 0.18, thickness_m: 0.0 },
+            upper: Plate { length_m: 0.16, width_m: 0.2, thickness_m: 0.004 },
+            pose: Pose { gap_m: 0.01, tilt_rad: 0.03, roll_rad: -0.02, shift_m: [0.01, 0.004] },
+            surroundings: Surroundings::Open,
+            dimensions: Dimensions::Three,
+        };
+        let grid = Grid::new(&arrangement, 2).unwrap();
+        assert!(!grid.half);
+        let r = arrangement.pose.rotation();
+        let up = grid.upper;
+        for (i, sx) in [(up.i[0], -1.0), (up.i[1], 1.0)] {
+            for (j, sy) in [(up.j[0], -1.0), (up.j[1], 1.0)] {
+                for (k, height) in [(up.k[0], 0.0), (up.k[1], 0.02)] {
+                    let p = [sx * 0.4, sy * 0.5, height];
+                    let x = grid.position(i, j, k);
+                    let c = [0.05, 0.02, 0.05];
+                    for d in 0..3 {
+                        assert!((x[d] - c[d] - crate::dot(r[d], p)).abs() < 1e-14);
+                    }
+                }
+            }
+        }
+        // The lower plate and the far boundary stand still, the blend is complementary.
+        let [nx, ny, nz] = grid.shape();
+        assert_eq!(grid.position(3, 4, 0)[2], grid.axes[2].nodes[0]);
+        assert_eq!(grid.position(nx - 1, ny - 1, nz - 1)[2], grid.axes[2].nodes[nz - 1]);
+        for k in grid.lower.k[1]..=grid.upper.k[0] {
+            assert!((grid.lower_carry.blend[k] + grid.upper_carry.blend[k] - 1.0).abs() < 1e-14);
+        }
+    }
+}

@@ -1,0 +1,212 @@
+//! One level of the family, solved: capacitance matrix and wrench in units of the grid.
+
+use std::time::Instant;
+
+use rayon::prelude::*;
+use tiltgap_meshes::{Arrangement, Grid, NodeBox};
+
+use crate::cg::{self, conjugate_gradient, Linear};
+use crate::field::{dots, Field};
+use crate::operator::Operator;
+use crate::separable::Separable;
+use crate::wrench::WrenchForm;
+use crate::Error;
+
+/// Settings of one level.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LevelParams {
+    /// The outer iteration.
+    pub outer: cg::Params,
+    /// Relative accuracy of the inner iteration that holds the plates.
+    pub inner_tolerance: f64,
+}
+
+impl Default for LevelParams {
+    fn default() -> Self {
+        LevelParams { outer: cg::Params::default(), inner_tolerance: 1e-2 }
+    }
+}
+
+/// A solved level, in units of the grid (size 1, permittivity 1, volts).
+#[derive(Clone, Debug)]
+pub struct Level {
+    /// The grid.
+    pub grid: Grid,
+    /// Fields that belong to 1 V on the lower plate (first) and on the upper plate (second), the other at 0 V.
+    pub phi: Field<2>,
+    /// Maxwell capacitance matrix.
+    pub matrix: [[f64; 2]; 2],
+    /// Wrench on the upper plate.
+    pub upper: WrenchForm,
+    /// What the iteration did.
+    pub info: cg::Info,
+    /// True residual at the end, relative to the energy, measured through the diagonal of the operator.
+    pub residual: f64,
+    /// Wall time, in seconds.
+    pub seconds: f64,
+}
+
+/// The operator on the free nodes.
+struct Free<'a> {
+    operator: &'a Operator,
+    fixed: &'a [bool],
+}
+
+impl Linear<2> for Free<'_> {
+    fn multiply(&self, x: &[[f64; 2]], y: &mut Field<2>) -> [f64; 2] {
+        self.operator.multiply(x, self.fixed, y)
+    }
+}
+
+fn for_each_node(plate: &NodeBox, grid: &Grid, mut act: impl FnMut(usize)) {
+    for i in plate.i[0]..=plate.i[1] {
+        for j in plate.j[0]..=plate.j[1] {
+            for k in plate.k[0]..=plate.k[1] {
+                act(grid.index(i, j, k));
+            }
+        }
+    }
+}
+
+/// sqrt(sum of r^2/diagonal) over sqrt(energy), the worst column.
+fn scaled_norm(r: &Field<2>, diagonal: &[f64], scale: [f64; 2]) -> f64 {
+    let weighted: Field<2> = r.par_iter().zip(diagonal).map(|(r, d)| [r[0] / d, r[1] / d]).collect();
+    let squares = dots(r, &weighted);
+    (0..2).map(|c| squares[c].sqrt() / scale[c]).fold(0.0, f64::max)
+}
+
+impl Level {
+    /// Solves level `q` of an arrangement, starting from a coarser level where there is one.
+    ///
+    /// `progress` is called with the iteration and the present error estimate.
+    ///
+    /// # Errors
+    /// A bad arrangement (also one that folds the grid), or no convergence.
+    pub fn solve(
+        arrangement: &Arrangement,
+        q: usize,
+        coarse: Option<&Level>,
+        params: &LevelParams,
+        progress: &mut dyn FnMut(usize, f64),
+    ) -> Result<Level, Error> {
+        let begun = Instant::now();
+        let grid = Grid::new(arrangement, q)?;
+        let operator =
+            Operator::assemble(&grid, arrangement.dimensions).ok_or_else(|| arrangement.folded())?;
+        let n = grid.nodes();
+        let mut fixed = vec![false; n];
+        let mut phi = match coarse {
+            Some(level) => level.carry_to(&grid),
+            None => between_the_plates(&grid),
+        };
+        for (plate, potential) in [(&grid.lower, [1.0, 0.0]), (&grid.upper, [0.0, 1.0])] {
+            for_each_node(plate, &grid, |node| {
+                fixed[node] = true;
+                phi[node] = potential;
+            });
+        }
+        let free = Free { operator: &operator, fixed: &fixed };
+        let nothing = vec![false; n];
+        let mut r = vec![[0.0; 2]; n];
+        let scale = operator.multiply(&phi, &nothing, &mut r).map(f64::sqrt);
+        let residual_of = |phi: &Field<2>, r: &mut Field<2>| {
+            free.multiply(phi, r);
+            r.par_iter_mut().for_each(|r| *r = [-r[0], -r[1]]);
+        };
+        residual_of(&phi, &mut r);
+        let mut separable = Separable::new(&grid, &fixed, params.inner_tolerance);
+        let info =
+            conjugate_gradient(&free, &mut separable, &mut phi, &mut r, scale, &params.outer, progress)?;
+        let diagonal = operator.diagonal();
+        let by_recurrence = scaled_norm(&r, &diagonal, scale);
+        residual_of(&phi, &mut r);
+        let residual = scaled_norm(&r, &diagonal, scale);
+        if residual > DRIFT * by_recurrence.max(params.outer.tolerance) {
+            let (iterations, tolerance) = (info.iterations, params.outer.tolerance);
+            return Err(Error::NotConverged { iterations, reached: residual, tolerance });
+        }
+        let matrix = energy_matrix(&operator, &nothing, &phi, &mut r, grid.multiplicity());
+        let upper = WrenchForm::new(&grid, &grid.upper_carry, &phi);
+        Ok(Level { grid, phi, matrix, upper, info, residual, seconds: begun.elapsed().as_secs_f64() })
+    }
+
+    /// The fields of this level on the grid of a finer one.
+    fn carry_to(&self, fine: &Grid) -> Field<2> {
+        let stencils = [0, 1, 2].map(|d| fine.axes[d].carry_from(&self.grid.axes[d]));
+        let [_, ny, nz] = self.grid.shape();
+        let [fx, fy, fz] = fine.shape();
+        let mut phi = vec![[0.0; 2]; fine.nodes()];
+        // One axis after the other: x of whole planes, then y of rows, then z.
+        phi.par_chunks_mut(fy * fz).zip(&stencils[0]).for_each(|(out, sx)| {
+            let mut plane = vec![[0.0; 2]; ny * nz];
+            for n in 0..sx.count {
+                let from = &self.phi[(sx.first + n) * ny * nz..(sx.first + n + 1) * ny * nz];
+                for (p, f) in plane.iter_mut().zip(from) {
+                    p[0] += sx.weights[n] * f[0];
+                    p[1] += sx.weights[n] * f[1];
+                }
+            }
+            let mut row = vec![[0.0; 2]; nz];
+            for (j, sy) in stencils[1].iter().enumerate() {
+                row.fill([0.0; 2]);
+                for n in 0..sy.count {
+                    for (p, f) in row.iter_mut().zip(&plane[(sy.first + n) * nz..]) {
+                        p[0] += sy.weights[n] * f[0];
+                        p[1] += sy.weights[n] * f[1];
+                    }
+                }
+                for (k, sz) in stencils[2].iter().enumerate() {
+                    let mut value = [0.0; 2];
+                    for n in 0..sz.count {
+                        value[0] += sz.weights[n] * row[sz.first + n][0];
+                        value[1] += sz.weights[n] * row[sz.first + n][1];
+                    }
+                    out[j * fz + k] = value;
+                }
+            }
+        });
+        debug_assert_eq!(stencils[0].len(), fx);
+        phi
+    }
+
+    /// Potentials of the plates for a pair without total charge, 1 V apart.
+    pub fn neutral(&self) -> [f64; 2] {
+        let c = &self.matrix;
+        let columns = [c[0][0] + c[1][0], c[0][1] + c[1][1]];
+        let lower = -columns[1] / (columns[0] + columns[1]);
+        [lower, 1.0 + lower]
+    }
+}
+
+/// By how much the true residual may exceed the one by recurrence.
+const DRIFT: f64 = 10.0;
+
+/// A first guess: linear across the gap between the plates, zero elsewhere.
+fn between_the_plates(grid: &Grid) -> Field<2> {
+    let mut phi = vec![[0.0; 2]; grid.nodes()];
+    let up = &grid.upper;
+    for i in up.i[0]..=up.i[1] {
+        for j in up.j[0]..=up.j[1] {
+            for k in grid.lower.k[1]..=up.k[0] {
+                let b = grid.upper_carry.blend[k];
+                phi[grid.index(i, j, k)] = [1.0 - b, b];
+            }
+        }
+    }
+    phi
+}
+
+/// phi^T A phi for the two fields: the Maxwell matrix.
+fn energy_matrix(
+    operator: &Operator,
+    nothing: &[bool],
+    phi: &Field<2>,
+    scratch: &mut Field<2>,
+    multiplicity: f64,
+) -> [[f64; 2]; 2] {
+    let own = operator.multiply(phi, nothing, scratch);
+    let crossed: Field<2> = scratch.par_iter().map(|v| [v[1], v[0]]).collect();
+    let mutual = dots(phi, &crossed);
+    let off = 0.5 * (mutual[0] + mutual[1]);
+    [[own[0], off], [off, own[1]]].map(|row| row.map(|c| c * multiplicity))
+}

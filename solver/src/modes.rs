@@ -1,0 +1,219 @@
+//! Eigenmodes of one axis: the transforms of the fast diagonalisation [Lynch64].
+//!
+//! For the second-difference operator D and the lumped masses M of an axis, the modes Q satisfy D Q = M Q Lambda and
+//! Q^T M Q = 1. Where the axis is its own mirror image the modes are even or odd, and a transform costs half.
+
+use nalgebra::{DMatrix, SymmetricEigen};
+use ndarray::linalg::general_mat_mul;
+use ndarray::{Array2, ArrayView2, ArrayViewMut2, Axis as Direction};
+use tiltgap_meshes::{Axis, End, FAR_DISTANCE};
+
+/// Symmetric tridiagonal matrix of an axis: second differences with what stands at the ends.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Stiffness {
+    /// Diagonal.
+    pub diagonal: Vec<f64>,
+    /// Off-diagonal, one entry for each cell (negative).
+    pub off: Vec<f64>,
+    /// What the far ends add to the diagonal (included there).
+    ends: [f64; 2],
+}
+
+impl Stiffness {
+    /// Of an axis; a far end adds 1/R, the Robin weight of a distant face.
+    pub fn new(axis: &Axis) -> Self {
+        let off: Vec<f64> = axis.cells().iter().map(|h| -1.0 / h).collect();
+        let n = axis.len();
+        let mut diagonal = vec![0.0; n];
+        for (k, o) in off.iter().enumerate() {
+            diagonal[k] -= o;
+            diagonal[k + 1] -= o;
+        }
+        let ends = axis.ends.map(|end| if end == End::Far { 1.0 / FAR_DISTANCE } else { 0.0 });
+        diagonal[0] += ends[0];
+        diagonal[n - 1] += ends[1];
+        Stiffness { diagonal, off, ends }
+    }
+
+    /// Energy of a vector, as a sum of squares: accurate for the smoothest mode too.
+    fn energy(&self, v: &[f64]) -> f64 {
+        let inner: f64 = self.off.iter().enumerate().map(|(k, o)| -o * (v[k + 1] - v[k]).powi(2)).sum();
+        inner + self.ends[0] * v[0].powi(2) + self.ends[1] * v[v.len() - 1].powi(2)
+    }
+}
+
+/// The modes of an axis.
+#[derive(Clone, Debug)]
+pub struct Modes {
+    /// Eigenvalues, in units of 1/length^2; even modes first where the axis is symmetric.
+    pub values: Vec<f64>,
+    /// Q: node down, mode across.
+    pub vectors: Array2<f64>,
+    /// The two half-size blocks where the axis is symmetric with a node in the middle.
+    folded: Option<Folded>,
+}
+
+/// Even and odd modes on half of the nodes (the middle node is the last of the even ones).
+#[derive(Clone, Debug)]
+struct Folded {
+    even: Array2<f64>,
+    odd: Array2<f64>,
+}
+
+/// Eigenvectors of the symmetric matrix D scaled by `basis`^T M^-1/2 D M^-1/2 `basis`, as nodal vectors.
+fn eigenvectors(stiffness: &Stiffness, masses: &[f64], basis: &DMatrix<f64>) -> DMatrix<f64> {
+    let n = masses.len();
+    let root: Vec<f64> = masses.iter().map(|m| m.sqrt()).collect();
+    let mut scaled = DMatrix::zeros(n, n);
+    for k in 0..n {
+        scaled[(k, k)] = stiffness.diagonal[k] / masses[k];
+    }
+    for (k, o) in stiffness.off.iter().enumerate() {
+        let value = o / (root[k] * root[k + 1]);
+        scaled[(k, k + 1)] = value;
+        scaled[(k + 1, k)] = value;
+    }
+    let mut vectors = basis * SymmetricEigen::new(basis.transpose() * scaled * basis).eigenvectors;
+    for (k, mut row) in vectors.row_iter_mut().enumerate() {
+        row /= root[k];
+    }
+    vectors
+}
+
+impl Modes {
+    /// Computes the modes; the cost grows with the cube of the number of nodes.
+    pub fn new(axis: &Axis) -> Modes {
+        let n = axis.len();
+        let (stiffness, masses) = (Stiffness::new(axis), axis.masses());
+        let h = n / 2;
+        let symmetric = axis.symmetric() && n % 2 == 1;
+        let vectors = if symmetric {
+            let half = 0.5f64.sqrt();
+            let (mut even, mut odd) = (DMatrix::zeros(n, h + 1), DMatrix::zeros(n, h));
+            for k in 0..h {
+                (even[(k, k)], even[(n - 1 - k, k)]) = (half, half);
+                (odd[(k, k)], odd[(n - 1 - k, k)]) = (half, -half);
+            }
+            even[(h, h)] = 1.0;
+            [even, odd].map(|basis| eigenvectors(&stiffness, &masses, &basis)).to_vec()
+        } else {
+            vec![eigenvectors(&stiffness, &masses, &DMatrix::identity(n, n))]
+        };
+        let columns: Vec<Vec<f64>> = vectors
+            .iter()
+            .flat_map(|v| v.column_iter().map(|c| c.iter().copied().collect::<Vec<f64>>()))
+            .collect();
+        let vectors = Array2::from_shape_fn((n, n), |(k, a)| columns[a][k]);
+        let block =
+            |dim: [usize; 2], first: usize| Array2::from_shape_fn(dim, |(k, a)| vectors[[k, first + a]]);
+        let folded = symmetric.then(|| Folded { even: block([h + 1, h + 1], 0), odd: block([h, h], h + 1) });
+        let values = columns.iter().map(|v| stiffness.energy(v)).collect();
+        Modes { values, vectors, folded }
+    }
+
+    /// Number of modes.
+    pub fn len(&self) -> usize {
+        self.values.len()
+    }
+
+    /// Modal coefficients Q^T v of nodal columns: (nodes x m) to (modes x m). Costs m n^2 multiplications, half of
+    /// that on a symmetric axis.
+    pub fn forward(&self, nodal: ArrayView2<f64>, mut modal: ArrayViewMut2<f64>) {
+        let Some(Folded { even, odd }) = &self.folded else {
+            return multiply(self.vectors.t(), nodal, modal);
+        };
+        let h = odd.nrows();
+        let n = self.len();
+        let mut plus = Array2::zeros((h + 1, nodal.ncols()));
+        let mut minus = Array2::zeros((h, nodal.ncols()));
+        for k in 0..h {
+            let (a, b) = (nodal.row(k), nodal.row(n - 1 - k));
+            ndarray::Zip::from(plus.row_mut(k)).and(minus.row_mut(k)).and(a).and(b).for_each(
+                |p, m, &a, &b| {
+                    *p = a + b;
+                    *m = a - b;
+                },
+            );
+        }
+        plus.row_mut(h).assign(&nodal.row(h));
+        let (first, second) = modal.view_mut().split_at(Direction(0), h + 1);
+        multiply(even.t(), plus.view(), first);
+        multiply(odd.t(), minus.view(), second);
+    }
+
+    /// Nodal values Q c of modal columns: (modes x m) to (nodes x m); same cost as [`Modes::forward`].
+    pub fn backward(&self, modal: ArrayView2<f64>, mut nodal: ArrayViewMut2<f64>) {
+        let Some(Folded { even, odd }) = &self.folded else {
+            return multiply(self.vectors.view(), modal, nodal);
+        };
+        let h = odd.nrows();
+        let (first, second) = modal.split_at(Direction(0), h + 1);
+        let mut plus = Array2::zeros((h + 1, modal.ncols()));
+        let mut minus = Array2::zeros((h, modal.ncols()));
+        multiply(even.view(), first, plus.view_mut());
+        multiply(odd.view(), second, minus.view_mut());
+        let (mut lower, mut upper) = nodal.view_mut().split_at(Direction(0), h + 1);
+        for k in 0..h {
+            let (p, m) = (plus.row(k), minus.row(k));
+            ndarray::Zip::from(lower.row_mut(k)).and(upper.row_mut(h - 1 - k)).and(p).and(m).for_each(
+                |a, b, &p, &m| {
+                    *a = p + m;
+                    *b = p - m;
+                },
+            );
+        }
+        lower.row_mut(h).assign(&plus.row(h));
+    }
+}
+
+/// c = a b, in whichever orientation writes along the rows of memory.
+pub fn multiply(a: ArrayView2<f64>, b: ArrayView2<f64>, mut c: ArrayViewMut2<f64>) {
+    if c.strides()[1] == 1 {
+        general_mat_mul(1.0, &a, &b, 0.0, &mut c);
+    } else {
+        general_mat_mul(1.0, &b.t(), &a.t(), 0.0, &mut c.view_mut().reversed_axes());
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn modes_diagonalise_and_transforms_invert_each_other() {
+        for axis in [
+            Axis::lateral(&[-0.5, 0.5], 2, false),
+            Axis::lateral(&[-0.5, 0.5, -0.4, 0.45], 1, false),
+            Axis::lateral(&[0.5], 2, true),
+            Axis::slab(),
+        ] {
+            let modes = Modes::new(&axis);
+            let (n, masses) = (axis.len(), axis.masses());
+            let stiffness = Stiffness::new(&axis);
+            let mut stiff = Array2::<f64>::zeros((n, n));
+            for k in 0..n {
+                stiff[[k, k]] = stiffness.diagonal[k];
+            }
+            for (k, &o) in stiffness.off.iter().enumerate() {
+                (stiff[[k, k + 1]], stiff[[k + 1, k]]) = (o, o);
+            }
+            let q = &modes.vectors;
+            let mass = Array2::from_diag(&ndarray::Array1::from(masses.clone()));
+            let one = q.t().dot(&mass).dot(q);
+            let values = q.t().dot(&stiff).dot(q);
+            let largest = modes.values.iter().copied().fold(0.0, f64::max);
+            for a in 0..n {
+                for b in 0..n {
+                    let delta = if a == b { 1.0 } else { 0.0 };
+                    assert!((one[[a, b]] - delta).abs() < 1e-12);
+                    assert!((values[[a, b]] - delta * modes.values[a]).abs() < 1e-13 * largest.max(1.0));
+                }
+            }
+            let v = Array2::from_shape_fn((n, 3), |(k, c)| ((k * 7 + c * 5) % 11) as f64 - 4.0);
+            let (mut modal, mut back) = (Array2::zeros((n, 3)), Array2::zeros((n, 3)));
+            modes.forward(mass.dot(&v).view(), modal.view_mut());
+            modes.backward(modal.view(), back.view_mut());
+            assert!((&back - &v).iter().all(|d| d.abs() < 1e-9));
+        }
+    }
+}

@@ -1,0 +1,208 @@
+//! The preconditioner: the untilted bench solved exactly.
+//!
+//! On the untilted grid the operator is separable, A0 = Dx.My.Mz + Mx.Dy.Mz + Mx.My.Dz. Modes along x and y leave
+//! one tridiagonal system along z for each pair of modes (fast diagonalisation [Lynch64]). The plates, where the
+//! potential is given, are held by charges on their nodes (capacitance-matrix method [Buzbee71]): with R picking the
+//! plate nodes, u = A0^-1 (r - R^T lambda), and lambda such that R u = 0. One forward and one backward transform
+//! serve both solves with A0.
+
+use ndarray::{Array2, Array3, ArrayView2, ArrayViewMut2, Axis as Direction};
+use rayon::prelude::*;
+use tiltgap_meshes::Grid;
+
+use crate::cg::Preconditioner;
+use crate::field::Field;
+use crate::hold::{Hold, PlaneModes};
+use crate::modes::{Modes, Stiffness};
+use crate::Error;
+
+/// Columns in a chunk of the transform along x.
+const COLUMNS: usize = 256;
+
+/// Tridiagonal systems along z, one for each pair of modes, factored.
+pub struct Columns {
+    /// Reciprocal pivots, `[mode along x][node along z][mode along y]`.
+    pivots: Array3<f64>,
+    /// Off-diagonal of the stiffness along z.
+    off: Vec<f64>,
+}
+
+impl Columns {
+    fn new(x: &Modes, y: &Modes, grid: &Grid) -> Columns {
+        let z = &grid.axes[2];
+        let (stiffness, masses, nz) = (Stiffness::new(z), z.masses(), z.len());
+        let mut pivots = Array3::zeros((x.len(), nz, y.len()));
+        pivots.axis_iter_mut(Direction(0)).into_par_iter().enumerate().for_each(|(a, mut slab)| {
+            for (b, mut column) in slab.axis_iter_mut(Direction(1)).enumerate() {
+                let lambda = x.values[a] + y.values[b];
+                let mut last = 0.0;
+                for k in 0..nz {
+                    let mut pivot = stiffness.diagonal[k] + lambda * masses[k];
+                    if k > 0 {
+                        pivot -= stiffness.off[k - 1].powi(2) * last;
+                    }
+                    last = 1.0 / pivot;
+                    column[k] = last;
+                }
+            }
+        });
+        Columns { pivots, off: stiffness.off }
+    }
+
+    /// Solves for mode `a` along x in place; row k holds node k along z, `K` right-hand sides by modes along y. The
+    /// solution is made from the top down to node `lowest`; below it the rows are left half-way.
+    fn solve(&self, a: usize, rows: &mut [f64], right_sides: usize, lowest: usize) {
+        let pivots = self.pivots.index_axis(Direction(0), a);
+        let (nz, ny) = pivots.dim();
+        let width = right_sides * ny;
+        let row = |k: usize| pivots.row(k).to_slice().expect("rows of the pivots are contiguous");
+        for k in 0..nz {
+            let (before, here) = rows.split_at_mut(k * width);
+            let last = if k > 0 { &before[(k - 1) * width..] } else { &[][..] };
+            for r in 0..right_sides {
+                let part = r * ny..(r + 1) * ny;
+                let here = &mut here[part.clone()];
+                if k > 0 {
+                    let (off, last) = (self.off[k - 1], &last[part]);
+                    for ((u, &p), &l) in here.iter_mut().zip(row(k)).zip(last) {
+                        *u = (*u - off * l) * p;
+                    }
+                } else {
+                    for (u, &p) in here.iter_mut().zip(row(k)) {
+                        *u *= p;
+                    }
+                }
+            }
+        }
+        for k in (lowest..nz - 1).rev() {
+            let (here, above) = rows[k * width..].split_at_mut(width);
+            let off = self.off[k];
+            for r in 0..right_sides {
+                let part = r * ny..(r + 1) * ny;
+                for ((u, &p), &v) in here[part.clone()].iter_mut().zip(row(k)).zip(&above[part]) {
+                    *u -= off * p * v;
+                }
+            }
+        }
+    }
+}
+
+/// The untilted bench with its plates held at zero, ready to be solved.
+pub struct Separable {
+    shape: [usize; 3],
+    x: Modes,
+    y: Modes,
+    columns: Columns,
+    hold: Hold,
+    fixed: Vec<bool>,
+    /// Transformed fields, kept between applications: `[mode along x][the rest]`.
+    buffers: [Vec<f64>; 2],
+}
+
+impl Separable {
+    /// Prepares the solve: modes, pivots, and the modal matrices of the plates. `fixed` marks the plate nodes;
+    /// `inner_tolerance` is the relative accuracy of the inner iteration.
+    pub fn new(grid: &Grid, fixed: &[bool], inner_tolerance: f64) -> Separable {
+        let [x, y] = [0, 1].map(|d| Modes::new(&grid.axes[d]));
+        let columns = Columns::new(&x, &y, grid);
+        let (shape, plates) = (grid.shape(), [grid.lower, grid.upper]);
+        let planes: Vec<usize> = plates.iter().flat_map(|p| p.k[0]..=p.k[1]).collect();
+        // The response of the planes to charges on them, mode by mode: G, planes x planes.
+        let (nx, ny, nz) = (x.len(), y.len(), shape[2]);
+        let mut response = vec![Array2::zeros((nx, ny)); planes.len() * planes.len()];
+        for (q, &from) in planes.iter().enumerate() {
+            let columns_of: Vec<Vec<f64>> = (0..nx)
+                .into_par_iter()
+                .map(|a| {
+                    let mut rows = vec![0.0; nz * ny];
+                    rows[from * ny..(from + 1) * ny].fill(1.0);
+                    columns.solve(a, &mut rows, 1, planes[0]);
+                    planes.iter().flat_map(|&to| rows[to * ny..(to + 1) * ny].to_vec()).collect()
+                })
+                .collect();
+            for (a, values) in columns_of.iter().enumerate() {
+                for p in 0..planes.len() {
+                    for b in 0..ny {
+                        response[p * planes.len() + q][[a, b]] = values[p * ny + b];
+                    }
+                }
+            }
+        }
+        let masses = [0, 1].map(|d| grid.axes[d].masses());
+        let hold = Hold::new(PlaneModes { planes, response }, &plates, [&x, &y], masses, inner_tolerance);
+        let buffers = [0, 1].map(|_| Vec::new());
+        Separable { shape, x, y, columns, hold, fixed: fixed.to_vec(), buffers }
+    }
+}
+
+/// The transform along x of all columns, in parallel over chunks of them.
+fn along_x(
+    from: &[f64],
+    to: &mut [f64],
+    n: usize,
+    transform: impl Fn(ArrayView2<f64>, ArrayViewMut2<f64>) + Sync,
+) {
+    let width = from.len() / n;
+    let from = ArrayView2::from_shape((n, width), from).expect("n rows");
+    let mut to = ArrayViewMut2::from_shape((n, width), to).expect("n rows");
+    to.axis_chunks_iter_mut(Direction(1), COLUMNS)
+        .into_par_iter()
+        .zip(from.axis_chunks_iter(Direction(1), COLUMNS).into_par_iter())
+        .for_each(|(to, from)| transform(from, to));
+}
+
+impl<const K: usize> Preconditioner<K> for Separable {
+    fn apply(&mut self, r: &[[f64; K]], z: &mut Field<K>) -> Result<usize, Error> {
+        let [nx, ny, nz] = self.shape;
+        let Separable { x, y, columns, hold, fixed, buffers, .. } = self;
+        let slab = ny * nz * K;
+        let (first, second) = buffers.split_at_mut(1);
+        let (first, second) = (&mut first[0], &mut second[0]);
+        first.resize(nx * slab, 0.0);
+        second.resize(nx * slab, 0.0);
+        along_x(r.as_flattened(), first, nx, |from, to| x.forward(from, to));
+        let planes = hold.planes().to_vec();
+        let lowest = planes[0];
+        // Per mode along x: transform along y to rows (z, right-hand side) by modes, solve, keep the plate planes.
+        let kept: Vec<Vec<f64>> = first
+            .par_chunks(slab)
+            .zip(second.par_chunks_mut(slab))
+            .enumerate()
+            .map_init(
+                || vec![0.0; slab],
+                |scratch, (a, (nodal, modal))| {
+                    let nodal = ArrayView2::from_shape((ny, nz * K), nodal).expect("a slab");
+                    let rows = ArrayViewMut2::from_shape((nz * K, ny), modal).expect("a slab");
+                    y.forward(nodal, rows.reversed_axes());
+                    scratch.copy_from_slice(modal);
+                    columns.solve(a, scratch, K, lowest);
+                    planes.iter().flat_map(|k| scratch[k * K * ny..(k + 1) * K * ny].to_vec()).collect()
+                },
+            )
+            .collect();
+        let (charges, iterations) = hold.charges::<K>(&kept)?;
+        second.par_chunks_mut(slab).zip(first.par_chunks_mut(slab)).enumerate().for_each(
+            |(a, (modal, nodal))| {
+                for (p, k) in planes.iter().enumerate() {
+                    for r in 0..K {
+                        let row = &mut modal[(k * K + r) * ny..(k * K + r + 1) * ny];
+                        for (v, c) in row.iter_mut().zip(charges[p * K + r].row(a)) {
+                            *v -= c;
+                        }
+                    }
+                }
+                columns.solve(a, modal, K, 0);
+                let rows = ArrayView2::from_shape((nz * K, ny), &*modal).expect("a slab");
+                let nodal = ArrayViewMut2::from_shape((ny, nz * K), nodal).expect("a slab");
+                y.backward(rows.reversed_axes(), nodal);
+            },
+        );
+        along_x(first, z.as_flattened_mut(), nx, |from, to| x.backward(from, to));
+        z.par_iter_mut().zip(fixed.par_iter()).for_each(|(z, &fixed)| {
+            if fixed {
+                *z = [0.0; K];
+            }
+        });
+        Ok(iterations)
+    }
+}
