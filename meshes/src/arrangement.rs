@@ -1,6 +1,7 @@
 //! The two plates, the pose of the upper one and what is around them.
 
-use crate::{dot, Plate, Pose, Vector3};
+use crate::bend::least_volume;
+use crate::{dot, Plate, Pose, Sideways, Vector3};
 
 /// Smallest and largest length accepted, in metres: a nanometre, below which a plate is not a continuum, and a
 /// kilometre. Outside of these something is wrong with the input.
@@ -9,6 +10,9 @@ const LENGTH_RANGE_M: [f64; 2] = [1e-9, 1e3];
 /// Smallest and largest gap in units of the largest lateral size of a plate for which the grid family was
 /// checked.
 const GAP_RATIO_RANGE: [f64; 2] = [1e-4, 5.0];
+
+/// Relative accuracy to which the smallest gap without folding is found.
+const FOLD_STEP: f64 = 1e-3;
 
 /// Largest ratio between the lateral sizes of the two plates, or of one plate, that the grid serves well.
 const ASPECT_LIMIT: f64 = 50.0;
@@ -171,8 +175,7 @@ pub enum ArrangementError {
     /// The plates are free of each other, but nearer than the fitted grid can follow.
     #[error(
         "the {edge} of the upper plate is only {clearance_m:.3e} m above the lower plate's surface, nearer than the \
-         fitted grid can follow at this tilt; it holds while half the plate's length times the tangent of the tilt \
-         stays below the gap: raise the gap above {needed_m:.6e} m or lower the tilt and the roll"
+         fitted grid can follow at so large an angle: raise the gap above {needed_m:.6e} m or lower the tilt and the roll"
     )]
     Folded {
         /// Which edge or corner.
@@ -234,22 +237,29 @@ impl Arrangement {
         }
     }
 
-    /// Height of the upper plate's plane above the point of the lower plate that lies under a corner when the
-    /// plates are parallel, for the corner where it is least. The fitted grid folds where this is not positive.
-    fn fold_height_m(&self) -> f64 {
-        let [sx, sy] = self.pose.slopes();
-        let reach = (sx * self.upper.length_m / 2.0).abs() + (sy * self.half_width_m()).abs();
-        self.pose.gap_m - reach
+    /// Whether the fitted grid folds at this gap.
+    fn folds(&self, gap_m: f64, sideways: Sideways) -> bool {
+        let pose = Pose { gap_m, ..self.pose };
+        least_volume(&pose, [self.upper.length_m / 2.0, self.half_width_m()], sideways) <= 0.0
     }
 
     /// The error for a pose in which the plates are free of each other but the grid folds.
-    pub fn folded(&self) -> ArrangementError {
+    pub fn folded(&self, sideways: Sideways) -> ArrangementError {
         let (edge, clearance_m) = self.lowest_edge();
-        ArrangementError::Folded {
-            edge,
-            clearance_m,
-            needed_m: self.pose.gap_m - self.fold_height_m().min(0.0),
+        // The smallest gap that does not fold, from above.
+        let (mut folded, mut valid) = (self.pose.gap_m, 2.0 * self.pose.gap_m);
+        while self.folds(valid, sideways) {
+            valid *= 2.0;
         }
+        while valid - folded > FOLD_STEP * valid {
+            let middle = 0.5 * (folded + valid);
+            if self.folds(middle, sideways) {
+                folded = middle;
+            } else {
+                valid = middle;
+            }
+        }
+        ArrangementError::Folded { edge, clearance_m, needed_m: valid }
     }
 
     fn half_width_m(&self) -> f64 {
@@ -285,11 +295,11 @@ impl Arrangement {
         (name, at[2])
     }
 
-    /// Checks every number of the arrangement except what only the grid can tell (folding).
+    /// Checks every number of the arrangement, and that a grid with the given sideways motion can follow the pose.
     ///
     /// # Errors
-    /// The first value that is out of its range, or the edge that touches.
-    pub fn check(&self) -> Result<(), ArrangementError> {
+    /// The first value that is out of its range, the edge that touches, or the edge at which the grid folds.
+    pub fn check(&self, sideways: Sideways) -> Result<(), ArrangementError> {
         let three = self.dimensions == Dimensions::Three;
         let lengths = [
             ("length of the lower plate", self.lower.length_m, true),
@@ -346,8 +356,8 @@ impl Arrangement {
         if height <= 0.0 {
             return Err(ArrangementError::Touching { edge, depth_m: -height, needed_m: gap_m - height });
         }
-        if self.fold_height_m() <= 0.0 {
-            return Err(self.folded());
+        if self.folds(gap_m, sideways) {
+            return Err(self.folded(sideways));
         }
         Ok(())
     }
@@ -366,7 +376,7 @@ mod tests {
 
     #[test]
     fn touching_plates_name_the_edge_and_the_depth() {
-        let error = squares(0.004, 10.0).check().unwrap_err();
+        let error = squares(0.004, 10.0).check(Sideways::Smooth).unwrap_err();
         let depth = 0.05 * 10f64.to_radians().sin() - 0.004;
         match &error {
             ArrangementError::Touching { edge, depth_m, needed_m } => {
@@ -375,17 +385,25 @@ mod tests {
             }
             other => panic!("{other}"),
         }
-        assert!(matches!(squares(0.004, -10.0).check(), Err(ArrangementError::Touching { edge, .. })
-            if edge == "free (+x) edge"));
+        assert!(
+            matches!(squares(0.004, -10.0).check(Sideways::Smooth), Err(ArrangementError::Touching { edge, .. })
+            if edge == "free (+x) edge")
+        );
     }
 
     #[test]
     fn absurd_values_are_refused() {
         for gap in [f64::NAN, -1.0, 0.0, 1e-300, f64::INFINITY] {
-            assert!(matches!(squares(gap, 0.0).check(), Err(ArrangementError::Length { what: "gap", .. })));
+            assert!(matches!(
+                squares(gap, 0.0).check(Sideways::Smooth),
+                Err(ArrangementError::Length { what: "gap", .. })
+            ));
         }
-        assert!(matches!(squares(0.01, 90.0).check(), Err(ArrangementError::Angle { what: "tilt", .. })));
-        assert!(matches!(squares(1.0, 0.0).check(), Err(ArrangementError::GapRatio { .. })));
-        assert!(squares(0.01, 1.0).check().is_ok());
+        assert!(matches!(
+            squares(0.01, 90.0).check(Sideways::Smooth),
+            Err(ArrangementError::Angle { what: "tilt", .. })
+        ));
+        assert!(matches!(squares(1.0, 0.0).check(Sideways::Smooth), Err(ArrangementError::GapRatio { .. })));
+        assert!(squares(0.01, 1.0).check(Sideways::Smooth).is_ok());
     }
 }

@@ -21,16 +21,14 @@ const SHORT_CELLS: usize = 4;
 const SHORT_SEGMENT: f64 = 0.25;
 /// Length over which the outside begins to stretch, in units of the size.
 const OUTSIDE_SCALE: f64 = 0.2;
-/// Distance of the far boundary from the plates, in units of the size.
-pub const FAR_DISTANCE: f64 = 20.0;
 /// Edges nearer than this (units of the size) are the same edge up to rounding.
 const SAME_EDGE: f64 = 1e-12;
 
 /// What stands at an end of an axis.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug, PartialEq)]
 pub enum End {
-    /// Far boundary of open space: the potential falls off as 1/r.
-    Far,
+    /// Far boundary of open space, at this distance from the plates: the potential falls off as 1/r.
+    Far(f64),
     /// No flux: a symmetry plane or an insulating wall.
     Natural,
 }
@@ -94,15 +92,15 @@ impl Chain {
     }
 
     /// Appends the outside, from the present end to the far boundary.
-    fn outside(&mut self, q: usize) {
+    fn outside(&mut self, q: usize, far: f64) {
         let edge = self.end();
-        let nodes: Vec<f64> = outward(OUTSIDE_CELLS * q, FAR_DISTANCE).iter().map(|o| edge + o).collect();
+        let nodes: Vec<f64> = outward(OUTSIDE_CELLS * q, far).iter().map(|o| edge + o).collect();
         self.append(&nodes);
     }
 
     /// A chain that comes in from the far boundary to `edge`.
-    fn inward(edge: f64, q: usize) -> Self {
-        let mut nodes: Vec<f64> = outward(OUTSIDE_CELLS * q, FAR_DISTANCE).iter().map(|o| edge - o).collect();
+    fn inward(edge: f64, q: usize, far: f64) -> Self {
+        let mut nodes: Vec<f64> = outward(OUTSIDE_CELLS * q, far).iter().map(|o| edge - o).collect();
         nodes.reverse();
         let mut chain = Chain::from(nodes[0]);
         chain.append(&nodes);
@@ -115,9 +113,9 @@ impl Chain {
 }
 
 impl Axis {
-    /// Lateral axis of level q through the given plate edges (any order), open on both sides; with `half`, the part
-    /// at positive coordinates, from a symmetry plane at 0.
-    pub fn lateral(edges: &[f64], q: usize, half: bool) -> Axis {
+    /// Lateral axis of level q through the given plate edges (any order), open on both sides out to the distance
+    /// `far`; with `half`, the part at positive coordinates, from a symmetry plane at 0.
+    pub fn lateral(edges: &[f64], q: usize, half: bool, far: f64) -> Axis {
         let mut e: Vec<f64> = edges.to_vec();
         e.sort_by(f64::total_cmp);
         e.dedup_by(|b, a| (*b - *a).abs() < SAME_EDGE);
@@ -129,14 +127,14 @@ impl Axis {
             chain.append(&one_end(0.0, e[0], PLATE_CELLS / 2 * q, EDGE_POWER));
             chain
         } else {
-            Chain::inward(e[0], q)
+            Chain::inward(e[0], q, far)
         };
         for pair in e.windows(2) {
             let cells = if pair[1] - pair[0] > SHORT_SEGMENT { PLATE_CELLS } else { SHORT_CELLS };
             chain.append(&both_ends(pair[0], pair[1], cells * q, EDGE_POWER));
         }
-        chain.outside(q);
-        chain.finish([if half { End::Natural } else { End::Far }, End::Far])
+        chain.outside(q, far);
+        chain.finish([if half { End::Natural } else { End::Far(far) }, End::Far(far)])
     }
 
     /// Lateral axis that ends at the edges of one plate, with insulating walls there.
@@ -153,8 +151,8 @@ impl Axis {
     }
 
     /// Vertical axis of level q: lower plate below 0, gap, upper plate from `gap` up, open space on both sides.
-    pub fn vertical(thickness: [f64; 2], gap: f64, q: usize) -> Axis {
-        let mut chain = Chain::inward(-thickness[0], q);
+    pub fn vertical(thickness: [f64; 2], gap: f64, q: usize, far: f64) -> Axis {
+        let mut chain = Chain::inward(-thickness[0], q, far);
         if thickness[0] > 0.0 {
             chain.append(&both_ends(-thickness[0], 0.0, SHORT_CELLS * q, BODY_POWER));
         }
@@ -162,8 +160,8 @@ impl Axis {
         if thickness[1] > 0.0 {
             chain.append(&both_ends(gap, gap + thickness[1], SHORT_CELLS * q, BODY_POWER));
         }
-        chain.outside(q);
-        chain.finish([End::Far; 2])
+        chain.outside(q, far);
+        chain.finish([End::Far(far); 2])
     }
 
     /// Vertical axis that holds the gap alone, for insulating walls: nothing is outside.
@@ -243,15 +241,15 @@ mod tests {
 
     #[test]
     fn the_prescribed_counts_and_the_edges() {
-        let axis = Axis::lateral(&[-0.5, 0.5, -0.5, 0.5], 2, false);
+        let axis = Axis::lateral(&[-0.5, 0.5, -0.5, 0.5], 2, false, 20.0);
         assert_eq!(axis.segments, [10, 16, 10]);
         assert!(axis.nodes.windows(2).all(|w| w[1] > w[0]) && axis.symmetric());
         assert_eq!(axis.nodes[axis.nearest(0.5)], 0.5);
         assert!((axis.nodes[36] - 20.5).abs() < 1e-12);
-        let half = Axis::lateral(&[-0.5, 0.5], 2, true);
+        let half = Axis::lateral(&[-0.5, 0.5], 2, true, 20.0);
         assert_eq!((half.segments.as_slice(), half.nodes[0]), ([8, 10].as_slice(), 0.0));
         assert!(half.nodes.iter().zip(&axis.nodes[18..]).all(|(a, b)| (a - b).abs() < 1e-14));
-        let unequal = Axis::lateral(&[-0.5, 0.5, -0.4, 0.3], 1, false);
+        let unequal = Axis::lateral(&[-0.5, 0.5, -0.4, 0.3], 1, false, 20.0);
         assert_eq!(unequal.segments, [5, 4, 8, 4, 5]);
     }
 
@@ -267,7 +265,7 @@ mod tests {
             values
         };
         let error = |q: usize| {
-            let [coarse, fine] = [q, 2 * q].map(|q| Axis::vertical([0.0, 0.1], 0.1, q));
+            let [coarse, fine] = [q, 2 * q].map(|q| Axis::vertical([0.0, 0.1], 0.1, q, 20.0));
             let (from, to) = (field(&coarse), field(&fine));
             let off = fine.carry_from(&coarse).into_iter().zip(&to).map(|(s, t)| (s.apply(&from) - t).abs());
             off.fold(0.0, f64::max)

@@ -8,14 +8,16 @@
 
 mod arrangement;
 mod axis;
+mod bend;
 mod grid;
 mod plate;
 mod pose;
 mod stencil;
 
 pub use arrangement::{Arrangement, ArrangementError, Dimensions, EdgeGaps, Rectangle, Surroundings};
-pub use axis::{Axis, End, FAR_DISTANCE};
-pub use grid::{Carry, Grid, NodeBox};
+pub use axis::{Axis, End};
+pub use bend::{Carry, Sideways};
+pub use grid::{Grid, GridOptions, NodeBox};
 pub use plate::Plate;
 pub use pose::{dot, Matrix3, Pose, Vector3};
 pub use stencil::Stencil;

@@ -12,22 +12,35 @@ fn main() {
         surroundings: Surroundings::Open,
         dimensions: if dim == 2.0 { Dimensions::Two } else { Dimensions::Three },
     };
-    let params = LevelParams { outer: cg::Params { tolerance: a[9], most_iterations: 500 }, inner_tolerance: a[10] };
+    let options = if std::env::var("PLAIN").is_ok() {
+        GridOptions { sideways: Sideways::Linear, far: 20.0 }
+    } else {
+        GridOptions::suited(&arr)
+    };
+    let params =
+        LevelParams { outer: cg::Params { tolerance: a[9], most_iterations: 500 }, inner_tolerance: a[10] };
     let mut prev: Option<Level> = None;
     for q in &a[11..] {
-        let l = match Level::solve(&arr, *q as usize, prev.as_ref(), &params, &mut |_, _| {}) {
+        let l = match Level::solve(&arr, &options, *q as usize, prev.as_ref(), &params, &mut |_, _| {}) {
             Ok(l) => l,
-            Err(e) => { println!("{e}"); return; }
+            Err(e) => {
+                println!("{e}");
+                return;
+            }
         };
         let n = l.neutral();
         let (wn, wg) = (l.upper.at(n), l.upper.at([0.0, 1.0]));
         let cn = l.matrix[1][0] * n[0] + l.matrix[1][1] * n[1];
         println!(
-            "q {} nodes {} it {} inner {:.1} res {:.1e} {:.3}s  C {:.9} {:.9} {:.9} Cn {:.9}\n   Fn {:.8?} Tn {:.8?}\n   Fg {:.8?} Tg {:.8?}",
+            "q {} nodes {} it {} inner {:.1} res {:.1e} {:.3}s  C {:.12} {:.12} {:.12} Cn {:.12}\n   Fn {:.11?} Tn {:.11?}\n   Fg {:.11?} Tg {:.11?}",
             q, l.grid.nodes(), l.info.iterations, l.info.inner_iterations as f64 / l.info.applications as f64, l.residual, l.seconds,
             l.matrix[0][0], l.matrix[0][1], l.matrix[1][1], cn, wn.force, wn.torque, wg.force, wg.torque
         );
-        if std::env::var("H").is_ok() { println!("{:?}", l.info.history.iter().map(|h| format!("{h:.1e}")).collect::<Vec<_>>()); }
-        if std::env::var("NOCARRY").is_err() { prev = Some(l); }
+        if std::env::var("H").is_ok() {
+            println!("{:?}", l.info.history.iter().map(|h| format!("{h:.1e}")).collect::<Vec<_>>());
+        }
+        if std::env::var("NOCARRY").is_err() {
+            prev = Some(l);
+        }
     }
 }

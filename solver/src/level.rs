@@ -3,7 +3,7 @@
 use std::time::Instant;
 
 use rayon::prelude::*;
-use tiltgap_meshes::{Arrangement, Grid, NodeBox};
+use tiltgap_meshes::{Arrangement, Grid, GridOptions, NodeBox};
 
 use crate::cg::{self, conjugate_gradient, Linear};
 use crate::field::{dots, Field};
@@ -23,7 +23,7 @@ pub struct LevelParams {
 
 impl Default for LevelParams {
     fn default() -> Self {
-        LevelParams { outer: cg::Params::default(), inner_tolerance: 1e-2 }
+        LevelParams { outer: cg::Params::default(), inner_tolerance: 1e-6 }
     }
 }
 
@@ -84,15 +84,16 @@ impl Level {
     /// A bad arrangement (also one that folds the grid), or no convergence.
     pub fn solve(
         arrangement: &Arrangement,
+        options: &GridOptions,
         q: usize,
         coarse: Option<&Level>,
         params: &LevelParams,
         progress: &mut dyn FnMut(usize, f64),
     ) -> Result<Level, Error> {
         let begun = Instant::now();
-        let grid = Grid::new(arrangement, q)?;
-        let operator =
-            Operator::assemble(&grid, arrangement.dimensions).ok_or_else(|| arrangement.folded())?;
+        let grid = Grid::new(arrangement, q, options)?;
+        let operator = Operator::assemble(&grid, arrangement.dimensions)
+            .ok_or_else(|| arrangement.folded(options.sideways))?;
         let n = grid.nodes();
         let mut fixed = vec![false; n];
         let mut phi = match coarse {
@@ -188,7 +189,7 @@ fn between_the_plates(grid: &Grid) -> Field<2> {
     for i in up.i[0]..=up.i[1] {
         for j in up.j[0]..=up.j[1] {
             for k in grid.lower.k[1]..=up.k[0] {
-                let b = grid.upper_carry.blend[k];
+                let b = grid.upper_carry.vertical[k];
                 phi[grid.index(i, j, k)] = [1.0 - b, b];
             }
         }

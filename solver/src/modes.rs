@@ -6,7 +6,7 @@
 use nalgebra::{DMatrix, SymmetricEigen};
 use ndarray::linalg::general_mat_mul;
 use ndarray::{Array2, ArrayView2, ArrayViewMut2, Axis as Direction};
-use tiltgap_meshes::{Axis, End, FAR_DISTANCE};
+use tiltgap_meshes::{Axis, End};
 
 /// Symmetric tridiagonal matrix of an axis: second differences with what stands at the ends.
 #[derive(Clone, Debug, PartialEq)]
@@ -29,7 +29,10 @@ impl Stiffness {
             diagonal[k] -= o;
             diagonal[k + 1] -= o;
         }
-        let ends = axis.ends.map(|end| if end == End::Far { 1.0 / FAR_DISTANCE } else { 0.0 });
+        let ends = axis.ends.map(|end| match end {
+            End::Far(distance) => 1.0 / distance,
+            End::Natural => 0.0,
+        });
         diagonal[0] += ends[0];
         diagonal[n - 1] += ends[1];
         Stiffness { diagonal, off, ends }
@@ -182,9 +185,9 @@ mod tests {
     #[test]
     fn modes_diagonalise_and_transforms_invert_each_other() {
         for axis in [
-            Axis::lateral(&[-0.5, 0.5], 2, false),
-            Axis::lateral(&[-0.5, 0.5, -0.4, 0.45], 1, false),
-            Axis::lateral(&[0.5], 2, true),
+            Axis::lateral(&[-0.5, 0.5], 2, false, 20.0),
+            Axis::lateral(&[-0.5, 0.5, -0.4, 0.45], 1, false, 20.0),
+            Axis::lateral(&[0.5], 2, true, 20.0),
             Axis::slab(),
         ] {
             let modes = Modes::new(&axis);

@@ -191,7 +191,7 @@ fn robin(grid: &Grid, dimensions: Dimensions) -> Vec<f64> {
     for axis in 0..3 {
         let [u, v] = [(axis + 1) % 3, (axis + 2) % 3];
         for (end, kind) in grid.axes[axis].ends.into_iter().enumerate() {
-            if kind != End::Far {
+            if !matches!(kind, End::Far(_)) {
                 continue;
             }
             let fixed = if end == 0 { 0 } else { shape[axis] - 1 };

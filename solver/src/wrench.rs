@@ -3,13 +3,13 @@
 //! For a rigid virtual displacement v of a plate, spread over the grid by its [`Carry`], the force is the derivative
 //! of the energy at fixed nodal potentials (Coulomb's virtual work method [Coulomb83]; the field is stationary):
 //! F_v = sum over corners of volume (1/2 |g|^2 div v - g . grad v . g) = -sum of volume T : grad v, with the Maxwell
-//! stress T = g g - |g|^2/2. With v = B (t + axis x lever) all six components come out of one pass, and because the
-//! form is quadratic in the field one pass serves every pair of plate potentials.
+//! stress T = g g - |g|^2/2. With v = B (t + axis x lever), B the weights of the carry, all six components come out of one pass, and because
+//! the form is quadratic in the field one pass serves every pair of plate potentials.
 
 use rayon::prelude::*;
 use tiltgap_meshes::{dot, Carry, Grid, Vector3};
 
-use crate::corner::{cross, differences, octants, positions, Corner, Plane};
+use crate::corner::{cross, differences, minus, octants, positions, Corner};
 use crate::field::{in_order, Field};
 
 /// Force and torque (about the centre of the plate's facing surface), in units of the grid.
@@ -69,32 +69,36 @@ fn plane_form(grid: &Grid, carry: &Carry, phi: &Field<2>, i: usize) -> [f64; 18]
     let [nx, ny, nz] = shape;
     let around = [i.checked_sub(1), Some(i), (i + 1 < nx).then_some(i + 1)];
     let position = around.map(|i| i.map(|i| positions(grid, i)));
-    let lever = around.map(|i| {
-        i.map(|i| {
-            let mut plane: Plane<Vector3> = Vec::with_capacity(ny * nz);
-            for j in 0..ny {
-                plane.extend((0..nz).map(|k| carry.lever(i, j, k)));
-            }
-            plane
-        })
-    });
+    let lever = |at: [usize; 3]| carry.lever(at[0], at[1], at[2]);
     let [p0, p1, p2] = &position;
-    let [l0, l1, l2] = &lever;
     let mut sum = [0.0; 18];
     for j in 0..ny {
         for k in 0..nz {
-            let moves = |k: usize| carry.blend[k] != 0.0;
-            if !(moves(k) || k > 0 && moves(k - 1) || k + 1 < nz && moves(k + 1)) {
+            if !(k.saturating_sub(1)..=(k + 1).min(nz - 1)).any(|k| carry.moves(k)) {
                 continue;
             }
             let edges = differences([p0.as_ref(), p1.as_ref(), p2.as_ref()], j, k, [ny, nz]);
-            let arms = differences([l0.as_ref(), l1.as_ref(), l2.as_ref()], j, k, [ny, nz]);
+            let at = [i, j, k];
+            let own = (lever(at), carry.weights(k));
+            let other: [[(Vector3, Vector3); 2]; 3] = [0, 1, 2].map(|l| {
+                [0, 1].map(|side| {
+                    let mut to = at;
+                    to[l] = (to[l] + 2 * side).wrapping_sub(1);
+                    if to[l] < shape[l] {
+                        (lever(to), carry.weights(to[2]))
+                    } else {
+                        own // there is no cell on that side
+                    }
+                })
+            });
             let node = grid.index(i, j, k);
             let stride = [ny * nz, nz, 1];
             for s in octants([i, j, k], shape) {
                 let Some(corner) = Corner::new(&[edges[0][s[0]], edges[1][s[1]], edges[2][s[2]]]) else {
                     continue;
                 };
+                // Lever and weights at the lower and the upper end of the corner's three edges.
+                let ends = [0, 1, 2].map(|l| if s[l] == 0 { [other[l][0], own] } else { [own, other[l][1]] });
                 let mut gradient = [[0.0; 3]; 2];
                 for l in 0..3 {
                     let (low, high) =
@@ -106,8 +110,6 @@ fn plane_form(grid: &Grid, carry: &Carry, phi: &Field<2>, i: usize) -> [f64; 18]
                         }
                     }
                 }
-                let neighbour = if s[2] == 0 { k - 1 } else { k + 1 };
-                let rise = (carry.blend[neighbour] - carry.blend[k]) * if s[2] == 0 { -1.0 } else { 1.0 };
                 for (n, [a, b]) in PRODUCTS.into_iter().enumerate() {
                     let (ga, gb) = (gradient[a], gradient[b]);
                     let both = dot(ga, gb);
@@ -118,12 +120,14 @@ fn plane_form(grid: &Grid, carry: &Carry, phi: &Field<2>, i: usize) -> [f64; 18]
                     };
                     let vertical = traction(corner.reciprocal[2]);
                     for d in 0..3 {
-                        sum[6 * n + d] -= corner.volume * rise * vertical[d];
+                        sum[6 * n + d] -= corner.volume * (ends[2][1].1[d] - ends[2][0].1[d]) * vertical[d];
                     }
                     for l in 0..3 {
-                        let arm = arms[l][s[l]];
                         let t = if l == 2 { vertical } else { traction(corner.reciprocal[l]) };
-                        let moment = cross(arm, t);
+                        let moment_at = |(lever, weights): (Vector3, Vector3)| {
+                            cross(lever, [weights[0] * t[0], weights[1] * t[1], weights[2] * t[2]])
+                        };
+                        let moment = minus(moment_at(ends[l][1]), moment_at(ends[l][0]));
                         for d in 0..3 {
                             sum[6 * n + 3 + d] -= corner.volume * moment[d];
                         }
