@@ -50,27 +50,37 @@ pub struct Carry {
 
 impl Carry {
     /// Weights of motion along x, y and z at z node `k`.
+    #[inline]
     pub fn weights(&self, k: usize) -> Vector3 {
         [self.sideways[k], self.sideways[k], self.vertical[k]]
     }
 
     /// Whether the nodes at `k` move at all.
+    #[inline]
     pub fn moves(&self, k: usize) -> bool {
         self.vertical[k] != 0.0
     }
 
+    /// Whether a node at `k` or one of its neighbours moves.
+    pub fn moves_near(&self, k: usize) -> bool {
+        self.vertical[k.saturating_sub(1)..(k + 2).min(self.vertical.len())].iter().any(|&w| w != 0.0)
+    }
+
     /// Lever arm of the plate point that a node follows: from the centre of the facing surface, in the room's
     /// directions.
+    #[inline]
     pub fn lever(&self, i: usize, j: usize, k: usize) -> Vector3 {
-        let p = [self.point[0][i], self.point[1][j], self.point[2][k]];
-        self.rotation.map(|r| dot(r, p))
+        let (p, r) = ([self.point[0][i], self.point[1][j], self.point[2][k]], &self.rotation);
+        [dot(r[0], p), dot(r[1], p), dot(r[2], p)]
     }
 
     /// Displacement of a node from its place in the untilted grid.
+    #[inline]
     pub fn displacement(&self, i: usize, j: usize, k: usize) -> Vector3 {
         let p = [self.point[0][i], self.point[1][j], self.point[2][k]];
-        let weights = self.weights(k);
-        [0, 1, 2].map(|d| weights[d] * (dot(self.rotation[d], p) - p[d]))
+        let (lever, weights) = (self.lever(i, j, k), self.weights(k));
+        let part = |d: usize| weights[d] * (lever[d] - p[d]);
+        [part(0), part(1), part(2)]
     }
 }
 

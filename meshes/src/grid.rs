@@ -194,11 +194,13 @@ impl Grid {
     }
 
     /// Number of a node: z runs fastest, x slowest.
+    #[inline]
     pub fn index(&self, i: usize, j: usize, k: usize) -> usize {
         (i * self.axes[1].len() + j) * self.axes[2].len() + k
     }
 
     /// Where a node stands in the room.
+    #[inline]
     pub fn position(&self, i: usize, j: usize, k: usize) -> Vector3 {
         let at = [self.axes[0].nodes[i], self.axes[1].nodes[j], self.axes[2].nodes[k]];
         let carry = &self.upper_carry;
@@ -206,7 +208,12 @@ impl Grid {
             return at;
         }
         let by = carry.displacement(i, j, k);
-        [0, 1, 2].map(|d| at[d] + by[d])
+        [at[0] + by[0], at[1] + by[1], at[2] + by[2]]
+    }
+
+    /// Whether force along y and torque about x and z vanish because the bench is its own mirror image.
+    pub fn mirrored(&self) -> bool {
+        self.half || self.axes[1].len() == 2
     }
 
     /// What a quantity of the grid has to be multiplied with to be that of the whole arrangement.

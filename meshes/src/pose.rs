@@ -6,6 +6,7 @@ pub type Vector3 = [f64; 3];
 pub type Matrix3 = [[f64; 3]; 3];
 
 /// Scalar product.
+#[inline(always)]
 pub fn dot(a: Vector3, b: Vector3) -> f64 {
     a[0] * b[0] + a[1] * b[1] + a[2] * b[2]
 }

@@ -3,9 +3,17 @@
 //! A [`Question`] goes in, an [`Assessment`] comes out. The level family is climbed until the error bar meets the
 //! accuracy asked for.
 
-use tiltgap_meshes::{Arrangement, Vector3};
+use std::time::Instant;
 
+use tiltgap_meshes::{Arrangement, Dimensions, GridOptions, Surroundings, Vector3};
+
+use crate::corner::cross;
+use crate::family::{Family, Quantities};
+use crate::wedge::wedge_factors;
 use crate::Error;
+
+/// Permittivity of vacuum in F/m, CODATA 2022 [Codata22].
+pub const EPS0: f64 = 8.854_187_818_8e-12;
 
 /// How the plates are wired.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -170,11 +178,81 @@ pub struct Assessment {
     pub seconds: f64,
 }
 
-/// Position of the hinge relative to the centre of the upper plate's facing surface, in metres.
+/// Position of the hinge relative to the centre of the upper plate's facing surface, in metres. Beam and plate turn
+/// about the hinge together; a roll is a misalignment of the plate on its beam and does not move the hinge.
 pub fn hinge_offset_m(arrangement: &Arrangement, hinge: &Hinge) -> Vector3 {
     let r = arrangement.pose.tilt_rotation();
     [0, 1, 2].map(|k| tiltgap_meshes::dot(r[k], [-hinge.arm_m, 0.0, hinge.height_m]))
 }
+
+/// What has to be multiplied with the numbers of the grid to give SI units (per metre of width in two dimensions).
+struct Units {
+    capacitance_f: f64,
+    force_n: f64,
+    torque_nm: f64,
+}
+
+impl Question {
+    /// Checks everything but the arrangement, which the grid checks.
+    fn check(&self) -> Result<(), Error> {
+        let wrong = |text: String| Err(Error::Question(text));
+        if !self.voltage_v.is_finite() || self.voltage_v == 0.0 || self.voltage_v.abs() > VOLTAGE_LIMIT_V {
+            return wrong(format!(
+                "the voltage is {:e} V; give one other than 0, at most 10 MV",
+                self.voltage_v
+            ));
+        }
+        if !(1.0..=PERMITTIVITY_LIMIT).contains(&self.relative_permittivity) {
+            let value = self.relative_permittivity;
+            return wrong(format!(
+                "the relative permittivity is {value}; give one from 1 to 1e6, for example 1.00054"
+            ));
+        }
+        if let Some(Hinge { arm_m, height_m }) = self.hinge {
+            if !arm_m.is_finite() || arm_m <= 0.0 || !height_m.is_finite() {
+                return wrong(format!(
+                    "the hinge has arm {arm_m:e} m and height {height_m:e} m; give a positive arm"
+                ));
+            }
+        }
+        let arrangement = &self.arrangement;
+        let in_the_plane = arrangement.dimensions == Dimensions::Two;
+        if in_the_plane
+            && self.connection == Connection::Grounded
+            && arrangement.surroundings == Surroundings::Open
+        {
+            return wrong(
+                "per metre of width in open space the grounded connection is not defined (the potential of a charged \
+                 line has no zero at infinity); choose the floating connection"
+                    .into(),
+            );
+        }
+        Ok(())
+    }
+
+    fn units(&self) -> Units {
+        let size = self.arrangement.size_m();
+        // A cross-section is solved as a slab one size wide.
+        let width = if self.arrangement.dimensions == Dimensions::Two { size } else { 1.0 };
+        let permittivity = EPS0 * self.relative_permittivity / width;
+        let energy = permittivity * self.voltage_v.powi(2);
+        Units { capacitance_f: permittivity * size, force_n: energy, torque_nm: energy * size }
+    }
+
+    /// The ideal formula for this question.
+    pub fn ideal(&self) -> Ideal {
+        let area = self.arrangement.overlap().area_m2();
+        let gap = self.arrangement.pose.gap_m;
+        let capacitance_f = EPS0 * self.relative_permittivity * area / gap;
+        let force_n = capacitance_f * self.voltage_v.powi(2) / (2.0 * gap);
+        Ideal { capacitance_f, force_n, torque_nm: self.hinge.map(|h| force_n * h.arm_m) }
+    }
+}
+
+/// Largest voltage accepted, in volts: far above what any gap in air holds.
+const VOLTAGE_LIMIT_V: f64 = 1e7;
+/// Largest relative permittivity accepted.
+const PERMITTIVITY_LIMIT: f64 = 1e6;
 
 /// Solves the bench, climbing the level family until the error bar meets `params.accuracy`.
 ///
@@ -187,6 +265,63 @@ pub fn assess(
     params: &Params,
     progress: &mut dyn FnMut(Progress),
 ) -> Result<Assessment, Error> {
-    let _ = (question, params, progress);
-    Err(Error::Question("not yet".into()))
+    let begun = Instant::now();
+    question.check()?;
+    let arrangement = &question.arrangement;
+    let options = GridOptions::suited(arrangement);
+    let size = arrangement.size_m();
+    let offset = question.hinge.map(|h| hinge_offset_m(arrangement, &h).map(|c| c / size));
+    let quantities = |level: &crate::Level| {
+        let potential = match question.connection {
+            Connection::Grounded => [0.0, 1.0],
+            Connection::Floating => level.neutral(),
+        };
+        let wrench = level.upper.at(potential);
+        let hinge = offset.map(|o| {
+            let of_force = cross(o, wrench.force);
+            [0, 1, 2].map(|d| wrench.torque[d] - of_force[d])
+        });
+        let [[c11, c12], [c21, c22]] = level.matrix;
+        let charge = c21 * potential[0] + c22 * potential[1];
+        Quantities { charge, matrix: [c11, c12, c22], force: wrench.force, centre: wrench.torque, hinge }
+    };
+    let family = Family::climb(arrangement, &options, params, &quantities, progress)?;
+    let units = question.units();
+    let scaled =
+        |e: Estimate, by: f64| Estimate { value: e.value * by, uncertainty: e.uncertainty * by.abs() };
+    let vector = |v: Components, by: f64| v.map(|e| scaled(e, by));
+    let limit = &family.limit;
+    let [c11, c12, c22] = limit.matrix.map(|e| scaled(e, units.capacitance_f));
+    let capacitance_f = scaled(limit.charge, units.capacitance_f);
+    let force_n = vector(limit.force, units.force_n);
+    let torque_hinge_nm = limit.hinge.map(|t| vector(t, units.torque_nm));
+    let ideal = question.ideal();
+    let wedge = wedge_factors(arrangement);
+    let factor = |e: Estimate, ideal: f64, wedge: f64| {
+        let value = e.value / ideal;
+        Factor { value, uncertainty: e.uncertainty / ideal, wedge, fringe: value / wedge }
+    };
+    let down = scaled(force_n[2], -1.0);
+    let factors = Factors {
+        capacitance: wedge.map(|w| factor(capacitance_f, ideal.capacitance_f, w.capacitance)),
+        force: wedge.map(|w| factor(down, ideal.force_n, w.force)),
+        torque: match (wedge, question.hinge, torque_hinge_nm, ideal.torque_nm) {
+            (Some(w), Some(h), Some(t), Some(t0)) => Some(factor(t[1], t0, w.torque(h.arm_m))),
+            _ => None,
+        },
+    };
+    Ok(Assessment {
+        capacitance_matrix_f: [[c11, c12], [c12, c22]],
+        capacitance_f,
+        charge_upper_c: scaled(capacitance_f, question.voltage_v),
+        energy_j: scaled(capacitance_f, 0.5 * question.voltage_v.powi(2)),
+        force_n,
+        torque_hinge_nm,
+        torque_centre_nm: vector(limit.centre, units.torque_nm),
+        ideal,
+        factors,
+        levels: family.levels,
+        observed_order: family.observed_order,
+        seconds: begun.elapsed().as_secs_f64(),
+    })
 }

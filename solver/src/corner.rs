@@ -7,34 +7,51 @@
 use tiltgap_meshes::{dot, Grid, Vector3};
 
 /// Vector product.
+#[inline(always)]
 pub fn cross(a: Vector3, b: Vector3) -> Vector3 {
     [a[1] * b[2] - a[2] * b[1], a[2] * b[0] - a[0] * b[2], a[0] * b[1] - a[1] * b[0]]
 }
 
 /// Difference of two vectors.
+#[inline(always)]
 pub fn minus(a: Vector3, b: Vector3) -> Vector3 {
     [a[0] - b[0], a[1] - b[1], a[2] - b[2]]
 }
 
-/// Volume and reciprocal edge vectors of a corner.
-#[derive(Clone, Copy, Debug)]
-pub struct Corner {
-    /// Volume that the corner stands for: det/8.
-    pub volume: f64,
-    /// Reciprocal vectors: `G_l . e_m` is 1 for l = m and 0 otherwise.
-    pub reciprocal: [Vector3; 3],
+/// The corners that meet at a node: up to eight, one for each choice of a side (0 below, 1 above) along each axis.
+pub struct Star {
+    edges: [[Vector3; 2]; 3],
+    /// Products of the edges along the other two axes, in cyclic order: `[axis][side of the next][side of the one after]`.
+    normals: [[[Vector3; 2]; 2]; 3],
 }
 
-impl Corner {
-    /// From the edge vectors; none if the corner is folded (determinant not positive).
-    #[inline]
-    pub fn new(edges: &[Vector3; 3]) -> Option<Corner> {
-        let normal = [cross(edges[1], edges[2]), cross(edges[2], edges[0]), cross(edges[0], edges[1])];
-        let det = dot(edges[0], normal[0]);
-        if det.is_nan() || det <= 0.0 {
-            return None;
+impl Star {
+    /// From the edge vectors, `[axis][side]`.
+    #[inline(always)]
+    pub fn new(edges: [[Vector3; 2]; 3]) -> Star {
+        let mut normals = [[[[0.0; 3]; 2]; 2]; 3];
+        for l in 0..3 {
+            for a in 0..2 {
+                for b in 0..2 {
+                    normals[l][a][b] = cross(edges[(l + 1) % 3][a], edges[(l + 2) % 3][b]);
+                }
+            }
         }
-        Some(Corner { volume: det / 8.0, reciprocal: normal.map(|n| n.map(|c| c / det)) })
+        Star { edges, normals }
+    }
+
+    /// The face normals of the corner on sides `s`: determinant times the reciprocal vectors G_l, where
+    /// `G_l . e_m` is 1 for l = m and 0 otherwise.
+    #[inline(always)]
+    pub fn normals(&self, s: [usize; 3]) -> [Vector3; 3] {
+        let n = &self.normals;
+        [n[0][s[1]][s[2]], n[1][s[2]][s[0]], n[2][s[0]][s[1]]]
+    }
+
+    /// Determinant of the edges of the corner on sides `s`: eight times the volume that it stands for.
+    #[inline(always)]
+    pub fn determinant(&self, s: [usize; 3]) -> f64 {
+        dot(self.edges[0][s[0]], self.normals[0][s[1]][s[2]])
     }
 }
 
@@ -56,7 +73,7 @@ pub fn positions(grid: &Grid, i: usize) -> Plane<Vector3> {
 /// The six differences of a nodal vector at node (j, k) of the middle of three planes: `[axis][side]`, side 0 from
 /// the neighbour below to the node, side 1 from the node to the neighbour above. Where there is no neighbour the
 /// difference is zero.
-#[inline]
+#[inline(always)]
 pub fn differences(
     planes: [Option<&Plane<Vector3>>; 3],
     j: usize,
@@ -88,13 +105,17 @@ pub fn differences(
     d
 }
 
-/// The sides (0 below, 1 above) of the cells that meet at node (i, j, k): up to eight.
-#[inline]
-pub fn octants(at: [usize; 3], shape: [usize; 3]) -> impl Iterator<Item = [usize; 3]> {
-    let exists = move |d: usize, side: usize| if side == 0 { at[d] > 0 } else { at[d] + 1 < shape[d] };
-    (0..8usize)
-        .map(|n| [n >> 2 & 1, n >> 1 & 1, n & 1])
-        .filter(move |s| exists(0, s[0]) && exists(1, s[1]) && exists(2, s[2]))
+/// Calls `act` with the sides (0 below, 1 above) of each of the cells that meet at a node: up to eight.
+#[inline(always)]
+pub fn for_each_octant(at: [usize; 3], shape: [usize; 3], mut act: impl FnMut([usize; 3])) {
+    let sides = |d: usize| usize::from(at[d] == 0)..1 + usize::from(at[d] + 1 < shape[d]);
+    for sx in sides(0) {
+        for sy in sides(1) {
+            for sz in sides(2) {
+                act([sx, sy, sz]);
+            }
+        }
+    }
 }
 
 #[cfg(test)]
@@ -102,15 +123,25 @@ mod tests {
     use super::*;
 
     #[test]
-    fn reciprocal_vectors_are_reciprocal_and_folded_corners_are_none() {
-        let edges = [[1.0, 0.1, 0.0], [0.2, 2.0, 0.3], [0.0, -0.4, 0.5]];
-        let corner = Corner::new(&edges).unwrap();
-        for l in 0..3 {
-            for m in 0..3 {
-                let expected = if l == m { 1.0 } else { 0.0 };
-                assert!((dot(corner.reciprocal[l], edges[m]) - expected).abs() < 1e-15);
+    fn reciprocal_vectors_are_reciprocal() {
+        let forward = [[1.0, 0.1, 0.0], [0.2, 2.0, 0.3], [0.0, -0.4, 0.5]];
+        let backward = [[0.9, 0.0, 0.1], [0.0, 1.5, 0.0], [0.1, 0.1, 0.7]];
+        let edges = [0, 1, 2].map(|l| [backward[l], forward[l]]);
+        let star = Star::new(edges);
+        for_each_octant([1, 1, 1], [3, 3, 3], |s| {
+            let (normals, det) = (star.normals(s), star.determinant(s));
+            for l in 0..3 {
+                for m in 0..3 {
+                    let expected = if l == m { 1.0 } else { 0.0 };
+                    assert!((dot(normals[l], edges[m][s[m]]) / det - expected).abs() < 1e-15);
+                }
             }
-        }
-        assert!(Corner::new(&[edges[1], edges[0], edges[2]]).is_none());
+        });
+        let mut corner = 0;
+        for_each_octant([0, 2, 1], [3, 3, 3], |s| {
+            assert!(s[0] == 1 && s[1] == 0);
+            corner += 1;
+        });
+        assert_eq!(corner, 2);
     }
 }

@@ -174,10 +174,18 @@ impl Level {
     pub fn neutral(&self) -> [f64; 2] {
         let c = &self.matrix;
         let columns = [c[0][0] + c[1][0], c[0][1] + c[1][1]];
-        let lower = -columns[1] / (columns[0] + columns[1]);
+        let total = columns[0] + columns[1];
+        if total < NO_OUTSIDE * c[0][0] {
+            // No field leaves the pair: it is without charge at any potential.
+            return [-0.5, 0.5];
+        }
+        let lower = -columns[1] / total;
         [lower, 1.0 + lower]
     }
 }
+
+/// Below this part of a plate's own capacitance, what the pair shares with the outside is rounding.
+const NO_OUTSIDE: f64 = 1e-11;
 
 /// By how much the true residual may exceed the one by recurrence.
 const DRIFT: f64 = 10.0;

@@ -7,20 +7,25 @@ mod assess;
 pub mod cg;
 mod corner;
 mod error;
+mod extrapolate;
+mod family;
 mod field;
 mod hold;
 mod level;
 mod modes;
 mod operator;
 mod separable;
+mod wedge;
 mod wrench;
 
 pub use assess::{
     assess, hinge_offset_m, Assessment, Components, Connection, Estimate, Factor, Factors, Hinge, Ideal,
-    LevelReport, Params, Progress, Question,
+    LevelReport, Params, Progress, Question, EPS0,
 };
 pub use error::Error;
+pub use extrapolate::{extrapolate, observed_order, Limit};
 pub use field::Field;
 pub use level::{Level, LevelParams};
 pub use operator::{Matrix, Operator};
+pub use wedge::{wedge_factors, WedgeFactors};
 pub use wrench::{Wrench, WrenchForm};

@@ -11,14 +11,15 @@ use rayon::prelude::*;
 use sprs::CsMatI;
 use tiltgap_meshes::{dot, Dimensions, End, Grid, Vector3};
 
-use crate::corner::{cross, differences, minus, octants, positions, Corner, Plane};
+use crate::corner::{cross, differences, for_each_octant, minus, positions, Plane, Star};
 use crate::field::{in_order, Field};
 
 /// Sparse matrix with 32-bit columns.
 pub type Matrix = CsMatI<f64, u32, usize>;
 
-/// Rows in a chunk of the parallel product.
-const ROWS: usize = 2048;
+/// Blocks of rows, the units of parallel work: enough for the threads of a workstation, few enough that the planes
+/// that neighbouring blocks both need do not cost much.
+const BLOCKS: usize = 16;
 
 /// Pairs of axes that a tilt couples.
 const PAIRS: [[usize; 2]; 3] = [[0, 1], [0, 2], [1, 2]];
@@ -31,40 +32,67 @@ struct NodeEnergy {
     edge: [[f64; 2]; 3],
     /// `[pair of axes][side of the first][side of the second]`
     pair: [[[f64; 2]; 2]; 3],
+    /// Whether any of the pairs is not zero.
+    coupled: bool,
 }
 
 /// The assembled operator of one grid.
 #[derive(Clone, Debug)]
 pub struct Operator {
-    /// A, symmetric; rows and columns are the nodes of the grid.
-    pub matrix: Matrix,
+    /// A, symmetric, in blocks of rows; rows and columns are the nodes of the grid.
+    blocks: Vec<Matrix>,
+    /// Rows of every block but the last.
+    block_rows: usize,
 }
 
-/// Energies of the nodes of the middle plane; none if a cell is folded.
-fn plane_energy(
-    planes: [Option<&Plane<Vector3>>; 3],
-    i: usize,
-    shape: [usize; 3],
-) -> Option<Plane<NodeEnergy>> {
+/// Energy at a node all of whose edges lie along the axes: no couplings.
+fn upright(edges: &[[Vector3; 2]; 3]) -> NodeEnergy {
+    let mut energy = NodeEnergy::default();
+    for l in 0..3 {
+        let [m, n] = [(l + 1) % 3, (l + 2) % 3];
+        let area = (edges[m][0][m] + edges[m][1][m]) * (edges[n][0][n] + edges[n][1][n]) / 8.0;
+        for side in (0..2).filter(|&side| edges[l][side][l] > 0.0) {
+            energy.edge[l][side] = area / edges[l][side][l];
+        }
+    }
+    energy
+}
+
+/// Energy at a node from the corners that meet there; none if one of them is folded.
+fn bent(edges: [[Vector3; 2]; 3], at: [usize; 3], shape: [usize; 3]) -> Option<NodeEnergy> {
+    let star = Star::new(edges);
+    let mut energy = NodeEnergy::default();
+    let mut folded = false;
+    for_each_octant(at, shape, |s| {
+        let det = star.determinant(s);
+        folded |= det.is_nan() || det <= 0.0;
+        let normals = star.normals(s);
+        // volume G_l.G_m = det/8 (normal_l/det).(normal_m/det)
+        let weight = 1.0 / (8.0 * det);
+        for l in 0..3 {
+            energy.edge[l][s[l]] += weight * dot(normals[l], normals[l]);
+        }
+        for (p, [l, m]) in PAIRS.into_iter().enumerate() {
+            // Differences are taken from the node outwards: a neighbour below turns the sign.
+            let sign = if s[l] == s[m] { weight } else { -weight };
+            energy.pair[p][s[l]][s[m]] += sign * dot(normals[l], normals[m]);
+        }
+    });
+    energy.coupled = energy.pair.as_flattened().as_flattened().iter().any(|&c| c != 0.0);
+    (!folded).then_some(energy)
+}
+
+/// Energies of the nodes of the plane with first index `i`, from the positions on it and on its two neighbours; none
+/// if a cell is folded.
+fn plane_energy(grid: &Grid, planes: [Option<&Plane<Vector3>>; 3], i: usize) -> Option<Plane<NodeEnergy>> {
+    let shape = grid.shape();
     let [_, ny, nz] = shape;
+    let still: Vec<bool> = (0..nz).map(|k| !grid.upper_carry.moves_near(k)).collect();
     let mut energies = Vec::with_capacity(ny * nz);
     for j in 0..ny {
         for k in 0..nz {
             let edges = differences(planes, j, k, [ny, nz]);
-            let mut energy = NodeEnergy::default();
-            for s in octants([i, j, k], shape) {
-                let corner = Corner::new(&[edges[0][s[0]], edges[1][s[1]], edges[2][s[2]]])?;
-                let g = &corner.reciprocal;
-                for l in 0..3 {
-                    energy.edge[l][s[l]] += corner.volume * dot(g[l], g[l]);
-                }
-                for (p, [l, m]) in PAIRS.into_iter().enumerate() {
-                    // Differences are taken from the node outwards: a neighbour below turns the sign.
-                    let sign = if s[l] == s[m] { 1.0 } else { -1.0 };
-                    energy.pair[p][s[l]][s[m]] += sign * corner.volume * dot(g[l], g[m]);
-                }
-            }
-            energies.push(energy);
+            energies.push(if still[k] { upright(&edges) } else { bent(edges, [i, j, k], shape)? });
         }
     }
     Some(energies)
@@ -76,6 +104,7 @@ fn slot(step: [isize; 3]) -> usize {
 }
 
 /// The row of node (i, j, k): its 27 possible entries, from the energies of three planes.
+
 fn row(planes: [Option<&Plane<NodeEnergy>>; 3], at: [usize; 3], shape: [usize; 3]) -> [f64; 27] {
     let [_, ny, nz] = shape;
     let step = |axis: usize, side: usize| {
@@ -84,10 +113,11 @@ fn row(planes: [Option<&Plane<NodeEnergy>>; 3], at: [usize; 3], shape: [usize; 3
         s
     };
     let exists = |axis: usize, side: usize| if side == 0 { at[axis] > 0 } else { at[axis] + 1 < shape[axis] };
+    let nothing = NodeEnergy::default();
     let energy = |s: [isize; 3]| {
         let here = (at[1] as isize + s[1]) * nz as isize + at[2] as isize + s[2];
         debug_assert!((at[1] as isize + s[1]) < ny as isize);
-        planes[(1 + s[0]) as usize].map(|plane| plane[here as usize]).unwrap_or_default()
+        planes[(1 + s[0]) as usize].map_or(&nothing, |plane| &plane[here as usize])
     };
     let plus = |a: [isize; 3], b: [isize; 3]| [a[0] + b[0], a[1] + b[1], a[2] + b[2]];
     let mut entries = [0.0; 27];
@@ -100,6 +130,9 @@ fn row(planes: [Option<&Plane<NodeEnergy>>; 3], at: [usize; 3], shape: [usize; 3
             let weight = own.edge[axis][side] + other.edge[axis][1 - side];
             entries[centre] += weight;
             entries[slot(to)] -= weight;
+            if !other.coupled {
+                continue;
+            }
             // The corners at that neighbour in which this node is the end of an edge.
             for (p, [l, m]) in PAIRS.into_iter().enumerate().filter(|(_, pair)| pair.contains(&axis)) {
                 let across = if axis == l { m } else { l };
@@ -114,7 +147,7 @@ fn row(planes: [Option<&Plane<NodeEnergy>>; 3], at: [usize; 3], shape: [usize; 3
             }
         }
     }
-    for (p, [l, m]) in PAIRS.into_iter().enumerate() {
+    for (p, [l, m]) in PAIRS.into_iter().enumerate().filter(|_| own.coupled) {
         for sl in 0..2 {
             for sm in 0..2 {
                 let coupling = own.pair[p][sl][sm];
@@ -129,16 +162,11 @@ fn row(planes: [Option<&Plane<NodeEnergy>>; 3], at: [usize; 3], shape: [usize; 3
     entries
 }
 
-/// Rows of a range of planes.
-#[derive(Default)]
-struct Rows {
-    lengths: Vec<u8>,
-    columns: Vec<u32>,
-    values: Vec<f64>,
-}
+/// Entries in a row of a tilted bench without roll, nearly enough: what space is set aside for.
+const ENTRIES: usize = 10;
 
 /// Rows of the planes `from..to`, with the Robin terms on the diagonal; none if a cell is folded.
-fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Rows> {
+fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Matrix> {
     let shape = grid.shape();
     let [nx, ny, nz] = shape;
     let place = |i: isize| (0..nx as isize).contains(&i).then(|| positions(grid, i as usize));
@@ -146,12 +174,16 @@ fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Rows> {
     // Two sliding windows: positions of three planes give the energies of one, energies of three give the rows.
     let mut position: [Option<Plane<Vector3>>; 3] = [place(start - 2), place(start - 1), place(start)];
     let mut energy: [Option<Plane<NodeEnergy>>; 3] = [None, None, None];
-    let mut rows = Rows::default();
+    let nodes = (to - from) * ny * nz;
+    let mut columns = Vec::with_capacity(ENTRIES * nodes);
+    let mut values = Vec::with_capacity(ENTRIES * nodes);
+    let mut starts = Vec::with_capacity(nodes + 1);
+    starts.push(0);
     for i in start - 1..=to as isize {
         energy.rotate_left(1);
         energy[2] = if (0..nx as isize).contains(&i) {
             let planes = [position[0].as_ref(), position[1].as_ref(), position[2].as_ref()];
-            Some(plane_energy(planes, i as usize, shape)?)
+            Some(plane_energy(grid, planes, i as usize)?)
         } else {
             None
         };
@@ -167,21 +199,20 @@ fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Rows> {
                 let node = grid.index(middle as usize, j, k);
                 let mut entries = row(planes, [middle as usize, j, k], shape);
                 entries[slot([0; 3])] += robin[node];
-                let before = rows.columns.len();
                 for (n, &value) in entries.iter().enumerate() {
                     if value != 0.0 {
                         let step = |n: usize, stride: usize| (n as isize - 1) * stride as isize;
                         let column =
                             node as isize + step(n / 9, ny * nz) + step(n / 3 % 3, nz) + step(n % 3, 1);
-                        rows.columns.push(column as u32);
-                        rows.values.push(value);
+                        columns.push(column as u32);
+                        values.push(value);
                     }
                 }
-                rows.lengths.push((rows.columns.len() - before) as u8);
+                starts.push(columns.len());
             }
         }
     }
-    Some(rows)
+    Some(Matrix::new((nodes, grid.nodes()), starts, columns, values))
 }
 
 /// Robin weights of the nodes on the far boundary: n.r/|r|^2 over each face of a boundary cell, shared by its nodes.
@@ -225,30 +256,28 @@ impl Operator {
     pub fn assemble(grid: &Grid, dimensions: Dimensions) -> Option<Operator> {
         let [nx, _, _] = grid.shape();
         let robin = robin(grid, dimensions);
-        let pieces = (4 * rayon::current_num_threads()).min(nx);
-        let parts: Option<Vec<Rows>> = (0..pieces)
+        let planes = nx.div_ceil(BLOCKS);
+        let blocks: Option<Vec<Matrix>> = (0..nx.div_ceil(planes))
             .into_par_iter()
-            .map(|p| rows(grid, &robin, p * nx / pieces, (p + 1) * nx / pieces))
+            .map(|p| rows(grid, &robin, p * planes, ((p + 1) * planes).min(nx)))
             .collect();
-        let parts = parts?;
-        let entries = parts.iter().map(|p| p.columns.len()).sum();
-        let (mut columns, mut values) = (Vec::with_capacity(entries), Vec::with_capacity(entries));
-        let mut starts = Vec::with_capacity(grid.nodes() + 1);
-        starts.push(0usize);
-        for part in parts {
-            for length in part.lengths {
-                starts.push(starts[starts.len() - 1] + length as usize);
-            }
-            columns.extend_from_slice(&part.columns);
-            values.extend_from_slice(&part.values);
-        }
-        let n = grid.nodes();
-        Some(Operator { matrix: Matrix::new((n, n), starts, columns, values) })
+        Some(Operator { blocks: blocks?, block_rows: planes * grid.nodes() / nx })
     }
 
     /// Number of rows.
     pub fn rows(&self) -> usize {
-        self.matrix.rows()
+        self.blocks.iter().map(|b| b.rows()).sum()
+    }
+
+    /// Number of stored entries.
+    pub fn entries(&self) -> usize {
+        self.blocks.iter().map(|b| b.nnz()).sum()
+    }
+
+    /// The whole matrix in one piece.
+    pub fn matrix(&self) -> Matrix {
+        let views: Vec<_> = self.blocks.iter().map(|b| b.view()).collect();
+        sprs::vstack(&views)
     }
 
     /// y = A x on the rows that are not `fixed`, zero on the fixed ones; returns x.y, column by column.
@@ -264,16 +293,16 @@ impl Operator {
             x.len(),
             y.len()
         );
-        let starts = self.matrix.indptr();
-        let starts = starts.raw_storage();
-        let (columns, values) = (self.matrix.indices(), self.matrix.data());
-        let part = |(chunk, y): (usize, &mut [[f64; K]])| {
+        let part = |(block, (matrix, y)): (usize, (&Matrix, &mut [[f64; K]]))| {
+            let starts = matrix.indptr();
+            let starts = starts.raw_storage();
+            let (columns, values) = (matrix.indices(), matrix.data());
             let mut sum = [0.0; K];
-            for (local, y) in y.iter_mut().enumerate() {
-                let node = chunk * ROWS + local;
+            for (row, y) in y.iter_mut().enumerate() {
+                let node = block * self.block_rows + row;
                 let mut value = [0.0; K];
                 if !fixed[node] {
-                    let range = starts[node]..starts[node + 1];
+                    let range = starts[row]..starts[row + 1];
                     for (&column, &a) in columns[range.clone()].iter().zip(&values[range]) {
                         let x = &x[column as usize];
                         for r in 0..K {
@@ -288,11 +317,17 @@ impl Operator {
             }
             sum
         };
-        in_order(y.par_chunks_mut(ROWS).enumerate().map(part).collect())
+        let chunks = self.blocks.par_iter().zip(y.par_chunks_mut(self.block_rows));
+        in_order(chunks.enumerate().map(part).collect())
     }
 
     /// The diagonal of A.
     pub fn diagonal(&self) -> Vec<f64> {
-        (0..self.rows()).into_par_iter().map(|n| self.matrix.get(n, n).copied().unwrap_or(0.0)).collect()
+        let own = |(block, matrix): (usize, &Matrix)| -> Vec<f64> {
+            (0..matrix.rows())
+                .map(|row| matrix.get(row, block * self.block_rows + row).copied().unwrap_or(0.0))
+                .collect()
+        };
+        self.blocks.par_iter().enumerate().flat_map_iter(own).collect()
     }
 }

@@ -8,7 +8,7 @@
 
 use ndarray::{Array2, Array3, ArrayView2, ArrayViewMut2, Axis as Direction};
 use rayon::prelude::*;
-use tiltgap_meshes::Grid;
+use tiltgap_meshes::{End, Grid};
 
 use crate::cg::Preconditioner;
 use crate::field::Field;
@@ -30,7 +30,13 @@ pub struct Columns {
 impl Columns {
     fn new(x: &Modes, y: &Modes, grid: &Grid) -> Columns {
         let z = &grid.axes[2];
-        let (stiffness, masses, nz) = (Stiffness::new(z), z.masses(), z.len());
+        let (mut stiffness, masses, nz) = (Stiffness::new(z), z.masses(), z.len());
+        if grid.axes.iter().all(|axis| axis.ends == [End::Natural; 2]) {
+            // Nothing pins the potential of a closed box, so A0 would be singular. Its floor and ceiling are the plates,
+            // which are held: any value there gives the same answer.
+            stiffness.diagonal[0] += 1.0;
+            stiffness.diagonal[nz - 1] += 1.0;
+        }
         let mut pivots = Array3::zeros((x.len(), nz, y.len()));
         pivots.axis_iter_mut(Direction(0)).into_par_iter().enumerate().for_each(|(a, mut slab)| {
             for (b, mut column) in slab.axis_iter_mut(Direction(1)).enumerate() {

@@ -9,7 +9,7 @@
 use rayon::prelude::*;
 use tiltgap_meshes::{dot, Carry, Grid, Vector3};
 
-use crate::corner::{cross, differences, minus, octants, positions, Corner};
+use crate::corner::{cross, differences, for_each_octant, minus, positions, Star};
 use crate::field::{in_order, Field};
 
 /// Force and torque (about the centre of the plate's facing surface), in units of the grid.
@@ -33,7 +33,7 @@ const PRODUCTS: [[usize; 2]; 3] = [[0, 0], [0, 1], [1, 1]];
 
 impl WrenchForm {
     /// Evaluates the form of a plate that moves with `carry`, for the fields `phi` that belong to unit potential on
-    /// either plate. On a symmetric half the components that vanish are exactly zero.
+    /// either plate. On a mirrored grid the components that vanish are exactly zero.
     pub fn new(grid: &Grid, carry: &Carry, phi: &Field<2>) -> WrenchForm {
         let [nx, _, _] = grid.shape();
         let planes: Vec<[f64; 18]> =
@@ -42,7 +42,7 @@ impl WrenchForm {
         let mut form = WrenchForm::default();
         for (n, coefficient) in form.coefficients.iter_mut().enumerate() {
             for c in 0..6 {
-                let vanishes = grid.half && [1, 3, 5].contains(&c);
+                let vanishes = grid.mirrored() && [1, 3, 5].contains(&c);
                 coefficient[c] = if vanishes { 0.0 } else { sum[6 * n + c] * grid.multiplicity() };
             }
         }
@@ -64,72 +64,81 @@ impl WrenchForm {
 }
 
 /// Contribution of the corners at the nodes of one plane.
+///
+/// The derivative of the energy with respect to an edge vector is -volume T.G of the corners that have that edge. So
+/// the tractions are added up for each edge at a node first, and only then meet the displacement of its two ends.
+
 fn plane_form(grid: &Grid, carry: &Carry, phi: &Field<2>, i: usize) -> [f64; 18] {
     let shape = grid.shape();
     let [nx, ny, nz] = shape;
-    let around = [i.checked_sub(1), Some(i), (i + 1 < nx).then_some(i + 1)];
-    let position = around.map(|i| i.map(|i| positions(grid, i)));
-    let lever = |at: [usize; 3]| carry.lever(at[0], at[1], at[2]);
-    let [p0, p1, p2] = &position;
+    let stride = [ny * nz, nz, 1];
+    let [below, middle, above] =
+        [i.checked_sub(1), Some(i), (i + 1 < nx).then_some(i + 1)].map(|i| i.map(|i| positions(grid, i)));
+    let planes = [below.as_ref(), middle.as_ref(), above.as_ref()];
     let mut sum = [0.0; 18];
     for j in 0..ny {
         for k in 0..nz {
-            if !(k.saturating_sub(1)..=(k + 1).min(nz - 1)).any(|k| carry.moves(k)) {
+            if !carry.moves_near(k) {
                 continue;
             }
-            let edges = differences([p0.as_ref(), p1.as_ref(), p2.as_ref()], j, k, [ny, nz]);
-            let at = [i, j, k];
-            let own = (lever(at), carry.weights(k));
-            let other: [[(Vector3, Vector3); 2]; 3] = [0, 1, 2].map(|l| {
-                [0, 1].map(|side| {
-                    let mut to = at;
-                    to[l] = (to[l] + 2 * side).wrapping_sub(1);
-                    if to[l] < shape[l] {
-                        (lever(to), carry.weights(to[2]))
-                    } else {
-                        own // there is no cell on that side
-                    }
-                })
-            });
-            let node = grid.index(i, j, k);
-            let stride = [ny * nz, nz, 1];
-            for s in octants([i, j, k], shape) {
-                let Some(corner) = Corner::new(&[edges[0][s[0]], edges[1][s[1]], edges[2][s[2]]]) else {
-                    continue;
-                };
-                // Lever and weights at the lower and the upper end of the corner's three edges.
-                let ends = [0, 1, 2].map(|l| if s[l] == 0 { [other[l][0], own] } else { [own, other[l][1]] });
+            let (at, node) = ([i, j, k], grid.index(i, j, k));
+            let star = Star::new(differences(planes, j, k, [ny, nz]));
+            let exists = |l: usize, side: usize| if side == 0 { at[l] > 0 } else { at[l] + 1 < shape[l] };
+            let mut difference = [[[0.0; 2]; 2]; 3];
+            for l in 0..3 {
+                for side in (0..2).filter(|&side| exists(l, side)) {
+                    let low = node - stride[l] * (1 - side);
+                    let (low, high) = (phi[low], phi[low + stride[l]]);
+                    difference[l][side] = [high[0] - low[0], high[1] - low[1]];
+                }
+            }
+            // `[axis][side][product]`
+            let mut traction = [[[[0.0; 3]; 3]; 2]; 3];
+            for_each_octant(at, shape, |s| {
+                let det = star.determinant(s);
+                let normals = star.normals(s);
                 let mut gradient = [[0.0; 3]; 2];
                 for l in 0..3 {
-                    let (low, high) =
-                        if s[l] == 0 { (node - stride[l], node) } else { (node, node + stride[l]) };
                     for r in 0..2 {
-                        let delta = phi[high][r] - phi[low][r];
+                        let delta = difference[l][s[l]][r] / det;
                         for d in 0..3 {
-                            gradient[r][d] += delta * corner.reciprocal[l][d];
+                            gradient[r][d] += delta * normals[l][d];
                         }
                     }
                 }
-                for (n, [a, b]) in PRODUCTS.into_iter().enumerate() {
+                let mut along = [[0.0; 3]; 2];
+                for r in 0..2 {
+                    for l in 0..3 {
+                        along[r][l] = dot(gradient[r], normals[l]);
+                    }
+                }
+                for (p, [a, b]) in PRODUCTS.into_iter().enumerate() {
                     let (ga, gb) = (gradient[a], gradient[b]);
                     let both = dot(ga, gb);
-                    // Traction T.G of the (symmetrised) stress on a reciprocal vector.
-                    let traction = |g: Vector3| {
-                        let (along_a, along_b) = (dot(ga, g), dot(gb, g));
-                        [0, 1, 2].map(|d| 0.5 * (ga[d] * along_b + gb[d] * along_a - both * g[d]))
-                    };
-                    let vertical = traction(corner.reciprocal[2]);
-                    for d in 0..3 {
-                        sum[6 * n + d] -= corner.volume * (ends[2][1].1[d] - ends[2][0].1[d]) * vertical[d];
-                    }
                     for l in 0..3 {
-                        let t = if l == 2 { vertical } else { traction(corner.reciprocal[l]) };
-                        let moment_at = |(lever, weights): (Vector3, Vector3)| {
-                            cross(lever, [weights[0] * t[0], weights[1] * t[1], weights[2] * t[2]])
-                        };
-                        let moment = minus(moment_at(ends[l][1]), moment_at(ends[l][0]));
+                        let sum = &mut traction[l][s[l]][p];
                         for d in 0..3 {
-                            sum[6 * n + 3 + d] -= corner.volume * moment[d];
+                            sum[d] +=
+                                0.5 * (ga[d] * along[b][l] + gb[d] * along[a][l] - both * normals[l][d]);
+                        }
+                    }
+                }
+            });
+            let end = |at: [usize; 3]| (carry.lever(at[0], at[1], at[2]), carry.weights(at[2]));
+            let own = end(at);
+            for l in 0..3 {
+                for side in (0..2).filter(|&side| exists(l, side)) {
+                    let mut to = at;
+                    to[l] = to[l] + 2 * side - 1;
+                    let other = end(to);
+                    let (low, high) = if side == 0 { (other, own) } else { (own, other) };
+                    for (p, t) in traction[l][side].iter().enumerate() {
+                        let pull = |w: Vector3| [w[0] * t[0], w[1] * t[1], w[2] * t[2]];
+                        let (up, down) = (pull(high.1), pull(low.1));
+                        let (force, moment) = (minus(up, down), minus(cross(high.0, up), cross(low.0, down)));
+                        for d in 0..3 {
+                            sum[6 * p + d] -= force[d] / 8.0;
+                            sum[6 * p + 3 + d] -= moment[d] / 8.0;
                         }
                     }
                 }

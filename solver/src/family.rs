@@ -1,0 +1,237 @@
+//! Climbing the level family until the error bar is small enough.
+//!
+//! Three consecutive levels make a limit ([`extrapolate`](crate::extrapolate)); if its uncertainty is too large the
+//! next level is solved, started from the one before. The first level is chosen so that the narrow edge of a strongly
+//! tilted gap, and the outside of a wide one, are resolved from the start: only then does the expansion hold.
+
+use tiltgap_meshes::{Arrangement, Grid, GridOptions, Vector3};
+
+use crate::assess::{Components, Estimate, LevelReport, Params, Progress};
+use crate::extrapolate::{extrapolate, Limit};
+use crate::level::{Level, LevelParams};
+use crate::Error;
+
+/// Levels of the family: each is 4/3 or 3/2 of the one before.
+const LADDER: [u32; 9] = [2, 3, 4, 6, 8, 12, 16, 24, 32];
+/// Cells that the coarsest level of a triple needs along the plate between the narrow edge and the place where the
+/// gap has doubled. Set on tilted strips down to an edge gap of 5 % of the centre gap.
+const CELLS_AT_NARROW_EDGE: f64 = 5.5;
+/// Cells per q from the edge to the middle of a plate.
+const HALF_PLATE_CELLS: f64 = 4.0;
+/// The far boundary at which level 2 is fine enough outside, in units of the size, and the length over which the
+/// outside stretches: a boundary farther away needs more cells in proportion to the logarithm.
+const OUTSIDE_AT_LEVEL_2: [f64; 2] = [20.0, 0.2];
+/// Relative uncertainty that is always there: far boundary, solver tolerance, rounding. Measured on strips at the
+/// finest levels, where nothing else is left.
+const FLOOR: f64 = 1e-6;
+/// Part of the largest component of a vector's uncertainty that every component carries at least: the small components
+/// are made from the same field.
+const SHARED: f64 = 0.25;
+/// Lever, in units of the size, at which the force counts when the torque about the centre is judged.
+const LEVER: f64 = 0.05;
+/// Solver tolerance: this part of the accuracy asked for, within these bounds.
+const TOLERANCE_PART: f64 = 1e-2;
+const TOLERANCE_RANGE: [f64; 2] = [1e-9, 1e-7];
+/// Memory for a node of the finest level, in bytes: matrix, fields and preconditioner together, measured.
+const BYTES_PER_NODE: u64 = 600;
+
+/// Numbers of one level, in units of the grid.
+#[derive(Clone, Copy, Debug)]
+pub struct Quantities {
+    /// Charge on the upper plate at 1 V.
+    pub charge: f64,
+    /// C11, C12, C22.
+    pub matrix: [f64; 3],
+    /// Force on the upper plate.
+    pub force: Vector3,
+    /// Torque about the centre of its facing surface.
+    pub centre: Vector3,
+    /// Torque about the hinge.
+    pub hinge: Option<Vector3>,
+}
+
+impl Quantities {
+    /// All numbers in a row, so that they can be extrapolated alike.
+    fn row(&self) -> Vec<f64> {
+        let hinge = self.hinge.unwrap_or_default();
+        [&[self.charge][..], &self.matrix, &self.force, &self.centre, &hinge].concat()
+    }
+}
+
+/// The limit of the family, in units of the grid.
+#[derive(Clone, Copy, Debug)]
+pub struct FamilyLimit {
+    /// Charge on the upper plate at 1 V.
+    pub charge: Estimate,
+    /// C11, C12, C22.
+    pub matrix: [Estimate; 3],
+    /// Force on the upper plate.
+    pub force: Components,
+    /// Torque about the centre of its facing surface.
+    pub centre: Components,
+    /// Torque about the hinge.
+    pub hinge: Option<Components>,
+}
+
+/// A family climbed far enough.
+pub struct Family {
+    /// Its limit.
+    pub limit: FamilyLimit,
+    /// What was solved on the way.
+    pub levels: Vec<LevelReport>,
+    /// Order of the vertical force over the last three levels.
+    pub observed_order: Option<f64>,
+}
+
+/// Index in the ladder of the first level that resolves an arrangement.
+fn first_level(arrangement: &Arrangement, options: &GridOptions) -> usize {
+    let narrow = arrangement.edge_gaps().lowest_corner_m / arrangement.pose.gap_m;
+    // Along the plate the nodes stand at the cube of a uniform parameter from the edge.
+    let at_edge = CELLS_AT_NARROW_EDGE / (HALF_PLATE_CELLS * narrow.cbrt());
+    let [far, scale] = OUTSIDE_AT_LEVEL_2;
+    let outside = 2.0 * (options.far / scale).ln() / (far / scale).ln();
+    let needed = at_edge.max(outside);
+    let last = LADDER.len() - 3;
+    LADDER.iter().position(|&q| q as f64 >= needed * (1.0 - f64::EPSILON)).unwrap_or(last).min(last)
+}
+
+fn vector(limits: &[Limit], scale: f64) -> Components {
+    let largest = limits.iter().map(|l| l.uncertainty).fold(0.0, f64::max);
+    [0, 1, 2].map(|d| {
+        let Limit { value, uncertainty, .. } = limits[d];
+        // A component that vanishes by symmetry is exactly zero on every level.
+        let exact = value == 0.0 && uncertainty == 0.0;
+        let bound = if exact { 0.0 } else { uncertainty.max(SHARED * largest) + FLOOR * scale };
+        Estimate { value, uncertainty: bound }
+    })
+}
+
+fn largest(v: &Components) -> f64 {
+    v.iter().map(|e| e.value.abs()).fold(0.0, f64::max)
+}
+
+impl FamilyLimit {
+    fn new(limits: &[Limit], with_hinge: bool) -> Self {
+        let plain =
+            |l: &Limit| Estimate { value: l.value, uncertainty: l.uncertainty + FLOOR * l.value.abs() };
+        let matrix = [1, 2, 3].map(|n| plain(&limits[n]));
+        let of = |from: usize| limits[from..from + 3].iter().map(|l| l.value.abs()).fold(0.0, f64::max);
+        let force = of(4);
+        FamilyLimit {
+            charge: plain(&limits[0]),
+            matrix,
+            force: vector(&limits[4..7], force),
+            centre: vector(&limits[7..10], of(7).max(LEVER * force)),
+            hinge: with_hinge.then(|| vector(&limits[10..13], of(10).max(LEVER * force))),
+        }
+    }
+
+    /// Relative uncertainties that are held against the accuracy asked for: force, and the worse of the torques.
+    fn reached(&self) -> [f64; 2] {
+        let force = largest(&self.force);
+        let of_force = self.force[2].uncertainty / self.force[2].value.abs().max(LEVER * force);
+        let centre = self.centre[1].uncertainty / largest(&self.centre).max(LEVER * force);
+        let hinge = self.hinge.map_or(0.0, |t| t[1].uncertainty / t[1].value.abs().max(LEVER * force));
+        [of_force, centre.max(hinge)]
+    }
+}
+
+impl Family {
+    /// Climbs until force and torque are known to `params.accuracy`.
+    ///
+    /// # Errors
+    /// What a level finds wrong, or [`Error::AccuracyNotReached`].
+    pub fn climb(
+        arrangement: &Arrangement,
+        options: &GridOptions,
+        params: &Params,
+        quantities: &dyn Fn(&Level) -> Quantities,
+        progress: &mut dyn FnMut(Progress),
+    ) -> Result<Family, Error> {
+        arrangement.check(options.sideways)?;
+        let mut level_params = LevelParams::default();
+        level_params.outer.tolerance =
+            (TOLERANCE_PART * params.accuracy).clamp(TOLERANCE_RANGE[0], TOLERANCE_RANGE[1]);
+        let mut levels: Vec<LevelReport> = Vec::new();
+        let mut rows: Vec<(f64, Vec<f64>)> = Vec::new();
+        let mut before: Option<Vec<Limit>> = None;
+        let mut coarse: Option<Level> = None;
+        let mut best: Option<(FamilyLimit, Option<f64>)> = None;
+        for &q in &LADDER[first_level(arrangement, options)..] {
+            let nodes = Grid::new(arrangement, q as usize, options)?.nodes();
+            // An accuracy below the floor is out of reach on any grid: no use in climbing on.
+            let hopeless = params.accuracy <= FLOOR && best.is_some();
+            if nodes as u64 * BYTES_PER_NODE > params.memory_bytes || hopeless {
+                break;
+            }
+            progress(Progress::Level { q, nodes });
+            let mut iteration = |iteration, error| progress(Progress::Iteration { q, iteration, error });
+            let level = Level::solve(
+                arrangement,
+                options,
+                q as usize,
+                coarse.as_ref(),
+                &level_params,
+                &mut iteration,
+            )?;
+            let measured = quantities(&level);
+            rows.push((q as f64, measured.row()));
+            let info = &level.info;
+            levels.push(LevelReport {
+                q,
+                nodes,
+                outer_iterations: info.iterations,
+                inner_iterations: info.inner_iterations as f64 / info.applications as f64,
+                residual: level.residual,
+                seconds: level.seconds,
+            });
+            coarse = Some(level);
+            let [.., a, b, c] = rows.as_slice() else { continue };
+            let limits: Vec<Limit> = (0..a.1.len())
+                .map(|n| {
+                    let previous = before.as_ref().map(|limits| limits[n].value);
+                    extrapolate([a.0, b.0, c.0], [a.1[n], b.1[n], c.1[n]], previous)
+                })
+                .collect();
+            let limit = FamilyLimit::new(&limits, measured.hinge.is_some());
+            let observed_order = limits[6].order;
+            if limit.reached().into_iter().all(|r| r <= params.accuracy) {
+                return Ok(Family { limit, levels, observed_order });
+            }
+            best = Some((limit, observed_order));
+            before = Some(limits);
+        }
+        let last = levels.last();
+        let [force, torque] = best.map_or([f64::INFINITY; 2], |b| b.0.reached());
+        let (level, nodes) = last.map_or((0, 0), |l| (l.q, l.nodes));
+        Err(Error::AccuracyNotReached {
+            asked: params.accuracy,
+            level,
+            nodes,
+            memory_bytes: nodes as u64 * BYTES_PER_NODE,
+            force,
+            torque,
+        })
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use tiltgap_meshes::{Dimensions, Plate, Pose, Surroundings};
+
+    #[test]
+    fn narrow_edges_and_wide_gaps_start_higher() {
+        let plate = Plate { length_m: 1.0, width_m: 1.0, thickness_m: 0.0 };
+        let start = |gap_m: f64, near: f64| {
+            let tilt_rad = ((1.0 - near) * gap_m / 0.5).asin();
+            let pose = Pose { gap_m, tilt_rad, roll_rad: 0.0, shift_m: [0.0; 2] };
+            let (surroundings, dimensions) = (Surroundings::Open, Dimensions::Three);
+            let arrangement = Arrangement { lower: plate, upper: plate, pose, surroundings, dimensions };
+            LADDER[first_level(&arrangement, &GridOptions::suited(&arrangement))]
+        };
+        assert_eq!([start(0.05, 1.0), start(0.05, 0.5)], [2, 2]);
+        assert_eq!([start(0.05, 0.2), start(0.05, 0.05), start(0.05, 0.01)], [3, 4, 8]);
+        assert_eq!([start(0.2, 1.0), start(0.5, 1.0)], [2, 3]);
+    }
+}
