@@ -4,7 +4,7 @@
 //! next level is solved, started from the one before. The first level is chosen so that the narrow edge of a strongly
 //! tilted gap, and the outside of a wide one, are resolved from the start: only then does the expansion hold.
 
-use tiltgap_meshes::{Arrangement, Grid, GridOptions, Vector3};
+use tiltgap_meshes::{Arrangement, Dimensions, Grid, GridOptions, Vector3};
 
 use crate::assess::{Components, Estimate, LevelReport, Params, Progress};
 use crate::extrapolate::{extrapolate, Limit};
@@ -24,11 +24,14 @@ const OUTSIDE_AT_LEVEL_2: [f64; 2] = [20.0, 0.2];
 /// Relative uncertainty that is always there: far boundary, solver tolerance, rounding. Measured on strips at the
 /// finest levels, where nothing else is left.
 const FLOOR: f64 = 1e-6;
-/// Part of the largest component of a vector's uncertainty that every component carries at least: the small components
-/// are made from the same field.
+/// Part of the largest component of a vector's uncertainty that every component carries at least, and of the force's
+/// uncertainty that a torque carries (times the size): they are made from the same field, and a small number that
+/// happens to agree between levels is not a known one.
 const SHARED: f64 = 0.25;
-/// Lever, in units of the size, at which the force counts when the torque about the centre is judged.
+/// Lever, in units of the size, at which the force counts when a torque is judged that may be zero.
 const LEVER: f64 = 0.05;
+/// First level of a cross-section, where finer ones cost next to nothing.
+const FIRST_IN_THE_PLANE: f64 = 4.0;
 /// Solver tolerance: this part of the accuracy asked for, within these bounds.
 const TOLERANCE_PART: f64 = 1e-2;
 const TOLERANCE_RANGE: [f64; 2] = [1e-9, 1e-7];
@@ -90,18 +93,20 @@ fn first_level(arrangement: &Arrangement, options: &GridOptions) -> usize {
     let at_edge = CELLS_AT_NARROW_EDGE / (HALF_PLATE_CELLS * narrow.cbrt());
     let [far, scale] = OUTSIDE_AT_LEVEL_2;
     let outside = 2.0 * (options.far / scale).ln() / (far / scale).ln();
-    let needed = at_edge.max(outside);
+    let plane = if arrangement.dimensions == Dimensions::Two { FIRST_IN_THE_PLANE } else { 0.0 };
+    let needed = at_edge.max(outside).max(plane);
     let last = LADDER.len() - 3;
     LADDER.iter().position(|&q| q as f64 >= needed * (1.0 - f64::EPSILON)).unwrap_or(last).min(last)
 }
 
-fn vector(limits: &[Limit], scale: f64) -> Components {
-    let largest = limits.iter().map(|l| l.uncertainty).fold(0.0, f64::max);
+/// A vector with the uncertainty of its components, each at least `least`; `scale` is what rounding is relative to.
+fn vector(limits: &[Limit], scale: f64, least: f64) -> Components {
+    let least = limits.iter().map(|l| SHARED * l.uncertainty).fold(least, f64::max);
     [0, 1, 2].map(|d| {
         let Limit { value, uncertainty, .. } = limits[d];
         // A component that vanishes by symmetry is exactly zero on every level.
         let exact = value == 0.0 && uncertainty == 0.0;
-        let bound = if exact { 0.0 } else { uncertainty.max(SHARED * largest) + FLOOR * scale };
+        let bound = if exact { 0.0 } else { uncertainty.max(least) + FLOOR * scale };
         Estimate { value, uncertainty: bound }
     })
 }
@@ -117,22 +122,23 @@ impl FamilyLimit {
         let matrix = [1, 2, 3].map(|n| plain(&limits[n]));
         let of = |from: usize| limits[from..from + 3].iter().map(|l| l.value.abs()).fold(0.0, f64::max);
         let force = of(4);
+        let shared = limits[4..7].iter().map(|l| SHARED * l.uncertainty).fold(0.0, f64::max);
         FamilyLimit {
             charge: plain(&limits[0]),
             matrix,
-            force: vector(&limits[4..7], force),
-            centre: vector(&limits[7..10], of(7).max(LEVER * force)),
-            hinge: with_hinge.then(|| vector(&limits[10..13], of(10).max(LEVER * force))),
+            force: vector(&limits[4..7], force, 0.0),
+            centre: vector(&limits[7..10], of(7).max(LEVER * force), shared),
+            hinge: with_hinge.then(|| vector(&limits[10..13], of(10).max(LEVER * force), shared)),
         }
     }
 
-    /// Relative uncertainties that are held against the accuracy asked for: force, and the worse of the torques.
+    /// Relative uncertainties that are held against the accuracy asked for: of the force and of the torque, about the
+    /// hinge where there is one, else about the centre.
     fn reached(&self) -> [f64; 2] {
         let force = largest(&self.force);
-        let of_force = self.force[2].uncertainty / self.force[2].value.abs().max(LEVER * force);
-        let centre = self.centre[1].uncertainty / largest(&self.centre).max(LEVER * force);
-        let hinge = self.hinge.map_or(0.0, |t| t[1].uncertainty / t[1].value.abs().max(LEVER * force));
-        [of_force, centre.max(hinge)]
+        let torque = self.hinge.unwrap_or(self.centre);
+        let relative = |e: Estimate, scale: f64| e.uncertainty / e.value.abs().max(LEVER * scale);
+        [relative(self.force[2], force), relative(torque[1], largest(&torque).max(force))]
     }
 }
 
@@ -218,7 +224,7 @@ impl Family {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use tiltgap_meshes::{Dimensions, Plate, Pose, Surroundings};
+    use tiltgap_meshes::{Plate, Pose, Surroundings};
 
     #[test]
     fn narrow_edges_and_wide_gaps_start_higher() {
