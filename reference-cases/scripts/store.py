@@ -45,7 +45,7 @@ def pretty(item, indent=0, used=0):
 
 def plain(value):
     """numpy and mpmath numbers to floats, arrays to lists, -0.0 to 0.0"""
-    if isinstance(value, (list, tuple, np.ndarray)):
+    if np.ndim(value) > 0:
         return [plain(v) for v in value]
     return float(value) + 0.0
 
