@@ -29,13 +29,14 @@ fn main() {
             }
         };
         let n = l.neutral();
-        let (wn, wg) = (l.upper.at(n), l.upper.at([0.0, 1.0]));
+        let (wn, wg) = (l.wrench(n), l.wrench([0.0, 1.0]));
         let cn = l.matrix[1][0] * n[0] + l.matrix[1][1] * n[1];
         println!(
             "q {} nodes {} it {} inner {:.1} res {:.1e} {:.3}s  C {:.12} {:.12} {:.12} Cn {:.12}\n   Fn {:.11?} Tn {:.11?}\n   Fg {:.11?} Tg {:.11?}",
-            q, l.grid.nodes(), l.info.iterations, l.info.inner_iterations as f64 / l.info.applications as f64, l.residual, l.seconds,
+            q, l.grid.nodes(), l.info.iterations, l.info.inner_iterations as f64 / l.info.applications as f64, l.residual, l.profile.total(),
             l.matrix[0][0], l.matrix[0][1], l.matrix[1][1], cn, wn.force, wn.torque, wg.force, wg.torque
         );
+        eprintln!("{}", l.profile);
         if std::env::var("H").is_ok() {
             println!("{:?}", l.info.history.iter().map(|h| format!("{h:.1e}")).collect::<Vec<_>>());
         }

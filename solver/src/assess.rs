@@ -276,7 +276,7 @@ pub fn assess(
             Connection::Grounded => [0.0, 1.0],
             Connection::Floating => level.neutral(),
         };
-        let wrench = level.upper.at(potential);
+        let wrench = level.wrench(potential);
         let hinge = offset.map(|o| {
             let of_force = cross(o, wrench.force);
             [0, 1, 2].map(|d| wrench.torque[d] - of_force[d])

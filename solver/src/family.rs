@@ -4,6 +4,8 @@
 //! next level is solved, started from the one before. The first level is chosen so that the narrow edge of a strongly
 //! tilted gap, and the outside of a wide one, are resolved from the start: only then does the expansion hold.
 
+use std::time::Instant;
+
 use tiltgap_meshes::{Arrangement, Dimensions, Grid, GridOptions, Vector3};
 
 use crate::assess::{Components, Estimate, LevelReport, Params, Progress};
@@ -171,6 +173,7 @@ impl Family {
                 break;
             }
             progress(Progress::Level { q, nodes });
+            let begun = Instant::now();
             let mut iteration = |iteration, error| progress(Progress::Iteration { q, iteration, error });
             let level = Level::solve(
                 arrangement,
@@ -189,7 +192,7 @@ impl Family {
                 outer_iterations: info.iterations,
                 inner_iterations: info.inner_iterations as f64 / info.applications as f64,
                 residual: level.residual,
-                seconds: level.seconds,
+                seconds: begun.elapsed().as_secs_f64(),
             });
             coarse = Some(level);
             let [.., a, b, c] = rows.as_slice() else { continue };

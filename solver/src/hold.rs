@@ -5,11 +5,11 @@
 //! pair. Conjugate gradient, preconditioned with the inverse of those small matrices restricted to the plates, needs
 //! the same few iterations at every level.
 
-use ndarray::{Array2, ArrayView2, Axis as Direction, Slice};
+use ndarray::{Array2, ArrayView2};
 use rayon::prelude::*;
 use tiltgap_meshes::NodeBox;
 
-use crate::modes::{multiply, Modes};
+use crate::modes::{multiply, Modes, Transform};
 use crate::Error;
 
 /// Most inner iterations; more than ten times what the worst case takes.
@@ -26,8 +26,8 @@ pub struct PlaneModes {
 /// One plane of a plate.
 struct Sheet {
     /// Modes along x on the nodes of the plate.
-    x: Array2<f64>,
-    /// Modes along y on the nodes of the plate.
+    x: Transform,
+    /// Modes along y on the nodes of the plate, node down.
     y: Array2<f64>,
     /// Area that belongs to each node.
     area: Array2<f64>,
@@ -43,20 +43,20 @@ pub struct Hold {
 }
 
 impl Sheet {
-    /// Modal coefficients of nodal values on the sheet.
-    fn forward(&self, nodal: ArrayView2<f64>) -> Array2<f64> {
+    /// Modal coefficients of nodal values on the sheet; `modes` is the number of modes along x.
+    fn forward(&self, nodal: ArrayView2<f64>, modes: usize) -> Array2<f64> {
         let mut along_y = Array2::zeros((nodal.nrows(), self.y.ncols()));
         multiply(nodal, self.y.view(), along_y.view_mut());
-        let mut modal = Array2::zeros((self.x.ncols(), self.y.ncols()));
-        multiply(self.x.t(), along_y.view(), modal.view_mut());
+        let mut modal = Array2::zeros((modes, self.y.ncols()));
+        self.x.forward(along_y.view(), modal.view_mut());
         modal
     }
 
     /// Nodal values on the sheet of modal coefficients.
     fn backward(&self, modal: ArrayView2<f64>) -> Array2<f64> {
-        let mut along_y = Array2::zeros((self.x.nrows(), self.y.ncols()));
-        multiply(self.x.view(), modal, along_y.view_mut());
-        let mut nodal = Array2::zeros((self.x.nrows(), self.y.nrows()));
+        let mut along_y = Array2::zeros((self.area.nrows(), self.y.ncols()));
+        self.x.backward(modal, along_y.view_mut());
+        let mut nodal = Array2::zeros(self.area.dim());
         multiply(along_y.view(), self.y.t(), nodal.view_mut());
         nodal
     }
@@ -104,8 +104,8 @@ impl Hold {
             .flat_map(|plate| {
                 let [i, j] = [plate.i, plate.j];
                 let sheet = || Sheet {
-                    x: x.vectors.slice_axis(Direction(0), Slice::from(i[0]..=i[1])).to_owned(),
-                    y: y.vectors.slice_axis(Direction(0), Slice::from(j[0]..=j[1])).to_owned(),
+                    x: x.on(i[0], i[1]),
+                    y: y.on(j[0], j[1]).vectors(),
                     area: Array2::from_shape_fn((i[1] - i[0] + 1, j[1] - j[0] + 1), |(m, n)| {
                         masses[0][i[0] + m] * masses[1][j[0] + n]
                     }),
@@ -140,7 +140,8 @@ impl Hold {
     }
 
     fn forward(&self, nodal: &OnSheets) -> OnSheets {
-        (&self.sheets, nodal).into_par_iter().map(|(sheet, v)| sheet.forward(v.view())).collect()
+        let modes = self.stiffness[0].nrows();
+        (&self.sheets, nodal).into_par_iter().map(|(sheet, v)| sheet.forward(v.view(), modes)).collect()
     }
 
     fn backward(&self, modal: &OnSheets) -> OnSheets {

@@ -9,7 +9,7 @@ use crate::cg::{self, conjugate_gradient, Linear};
 use crate::field::{dots, Field};
 use crate::operator::Operator;
 use crate::separable::Separable;
-use crate::wrench::WrenchForm;
+use crate::wrench::Wrench;
 use crate::Error;
 
 /// Settings of one level.
@@ -27,6 +27,31 @@ impl Default for LevelParams {
     }
 }
 
+/// Wall time of the stages of a level, in seconds.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct Profile {
+    /// Grid and sparse matrix.
+    pub assembly: f64,
+    /// Start field, modes and pivots of the preconditioner.
+    pub preparation: f64,
+    /// Conjugate gradient, residual and capacitance matrix.
+    pub iteration: f64,
+}
+
+impl Profile {
+    /// All stages together.
+    pub fn total(&self) -> f64 {
+        self.assembly + self.preparation + self.iteration
+    }
+}
+
+impl std::fmt::Display for Profile {
+    fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
+        let [a, p, i, all] = [self.assembly, self.preparation, self.iteration, self.total()].map(|s| 1e3 * s);
+        write!(f, "{all:.0} ms: assembly {a:.0}, preparation {p:.0}, iteration {i:.0}")
+    }
+}
+
 /// A solved level, in units of the grid (size 1, permittivity 1, volts).
 #[derive(Clone, Debug)]
 pub struct Level {
@@ -36,14 +61,12 @@ pub struct Level {
     pub phi: Field<2>,
     /// Maxwell capacitance matrix.
     pub matrix: [[f64; 2]; 2],
-    /// Wrench on the upper plate.
-    pub upper: WrenchForm,
     /// What the iteration did.
     pub info: cg::Info,
     /// True residual at the end, relative to the energy, measured through the diagonal of the operator.
     pub residual: f64,
-    /// Wall time, in seconds.
-    pub seconds: f64,
+    /// Where the time went.
+    pub profile: Profile,
 }
 
 /// The operator on the free nodes.
@@ -94,6 +117,7 @@ impl Level {
         let grid = Grid::new(arrangement, q, options)?;
         let operator = Operator::assemble(&grid, arrangement.dimensions)
             .ok_or_else(|| arrangement.folded(options.sideways))?;
+        let assembly = begun.elapsed().as_secs_f64();
         let n = grid.nodes();
         let mut fixed = vec![false; n];
         let mut phi = match coarse {
@@ -116,6 +140,7 @@ impl Level {
         };
         residual_of(&phi, &mut r);
         let mut separable = Separable::new(&grid, &fixed, params.inner_tolerance);
+        let prepared = begun.elapsed().as_secs_f64();
         let info =
             conjugate_gradient(&free, &mut separable, &mut phi, &mut r, scale, &params.outer, progress)?;
         let diagonal = operator.diagonal();
@@ -127,8 +152,12 @@ impl Level {
             return Err(Error::NotConverged { iterations, reached: residual, tolerance });
         }
         let matrix = energy_matrix(&operator, &nothing, &phi, &mut r, grid.multiplicity());
-        let upper = WrenchForm::new(&grid, &grid.upper_carry, &phi);
-        Ok(Level { grid, phi, matrix, upper, info, residual, seconds: begun.elapsed().as_secs_f64() })
+        let profile = Profile {
+            assembly,
+            preparation: prepared - assembly,
+            iteration: begun.elapsed().as_secs_f64() - prepared,
+        };
+        Ok(Level { grid, phi, matrix, info, residual, profile })
     }
 
     /// The fields of this level on the grid of a finer one.
@@ -168,6 +197,16 @@ impl Level {
         });
         debug_assert_eq!(stencils[0].len(), fx);
         phi
+    }
+
+    /// Force and torque on the upper plate for the given potentials of the lower and the upper plate.
+    pub fn wrench(&self, potential: [f64; 2]) -> Wrench {
+        Wrench::new(&self.grid, &self.grid.upper_carry, &self.phi, potential)
+    }
+
+    /// Force and torque on the lower plate, from a virtual displacement of its own.
+    pub fn wrench_on_lower(&self, potential: [f64; 2]) -> Wrench {
+        Wrench::new(&self.grid, &self.grid.lower_carry, &self.phi, potential)
     }
 
     /// Potentials of the plates for a pair without total charge, 1 V apart.

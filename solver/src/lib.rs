@@ -25,7 +25,7 @@ pub use assess::{
 pub use error::Error;
 pub use extrapolate::{extrapolate, observed_order, Limit};
 pub use field::Field;
-pub use level::{Level, LevelParams};
+pub use level::{Level, LevelParams, Profile};
 pub use operator::{Matrix, Operator};
 pub use wedge::{wedge_factors, WedgeFactors};
-pub use wrench::{Wrench, WrenchForm};
+pub use wrench::Wrench;

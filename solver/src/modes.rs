@@ -5,7 +5,7 @@
 
 use nalgebra::{DMatrix, SymmetricEigen};
 use ndarray::linalg::general_mat_mul;
-use ndarray::{Array2, ArrayView2, ArrayViewMut2, Axis as Direction};
+use ndarray::{Array2, ArrayView2, ArrayViewMut2, Axis as Direction, Slice};
 use tiltgap_meshes::{Axis, End};
 
 /// Symmetric tridiagonal matrix of an axis: second differences with what stands at the ends.
@@ -50,17 +50,25 @@ impl Stiffness {
 pub struct Modes {
     /// Eigenvalues, in units of 1/length^2; even modes first where the axis is symmetric.
     pub values: Vec<f64>,
-    /// Q: node down, mode across.
-    pub vectors: Array2<f64>,
-    /// The two half-size blocks where the axis is symmetric with a node in the middle.
-    folded: Option<Folded>,
+    /// Between nodal values and modal coefficients, on all nodes.
+    pub transform: Transform,
+    /// Whether the modes are even and odd ones.
+    symmetric: bool,
 }
 
-/// Even and odd modes on half of the nodes (the middle node is the last of the even ones).
+/// Modes on a range of nodes, and the products with them. On a range that is its own mirror image the modes fold into
+/// even and odd ones on half of the nodes (the middle node is the last of the even ones), at half the cost.
 #[derive(Clone, Debug)]
-struct Folded {
-    even: Array2<f64>,
-    odd: Array2<f64>,
+pub enum Transform {
+    /// Node down, mode across.
+    Whole(Array2<f64>),
+    /// The same in two blocks of half the nodes, even modes first.
+    Folded {
+        /// Nodes up to the middle one, even modes.
+        even: Array2<f64>,
+        /// Nodes before the middle one, odd modes.
+        odd: Array2<f64>,
+    },
 }
 
 /// Eigenvectors of the symmetric matrix D scaled by `basis`^T M^-1/2 D M^-1/2 `basis`, as nodal vectors.
@@ -107,11 +115,9 @@ impl Modes {
             .flat_map(|v| v.column_iter().map(|c| c.iter().copied().collect::<Vec<f64>>()))
             .collect();
         let vectors = Array2::from_shape_fn((n, n), |(k, a)| columns[a][k]);
-        let block =
-            |dim: [usize; 2], first: usize| Array2::from_shape_fn(dim, |(k, a)| vectors[[k, first + a]]);
-        let folded = symmetric.then(|| Folded { even: block([h + 1, h + 1], 0), odd: block([h, h], h + 1) });
         let values = columns.iter().map(|v| stiffness.energy(v)).collect();
-        Modes { values, vectors, folded }
+        let transform = Transform::new(vectors, symmetric);
+        Modes { values, transform, symmetric }
     }
 
     /// Number of modes.
@@ -119,14 +125,57 @@ impl Modes {
         self.values.len()
     }
 
-    /// Modal coefficients Q^T v of nodal columns: (nodes x m) to (modes x m). Costs m n^2 multiplications, half of
-    /// that on a symmetric axis.
+    /// The transform on the nodes from `from` to `to`, both included.
+    pub fn on(&self, from: usize, to: usize) -> Transform {
+        let vectors = self.transform.vectors().slice_axis(Direction(0), Slice::from(from..=to)).to_owned();
+        let centred = from + to == self.len() - 1 && (from + to) % 2 == 0;
+        Transform::new(vectors, self.symmetric && centred)
+    }
+}
+
+impl Transform {
+    /// From modes, node down and mode across; `symmetric` says that the first half of the modes (and the middle one) is
+    /// even about the middle node, the rest odd.
+    fn new(vectors: Array2<f64>, symmetric: bool) -> Transform {
+        if !symmetric {
+            return Transform::Whole(vectors);
+        }
+        let (n, modes) = vectors.dim();
+        let (h, odd_modes) = (n / 2, modes / 2);
+        let block =
+            |dim: (usize, usize), first: usize| Array2::from_shape_fn(dim, |(k, a)| vectors[[k, first + a]]);
+        Transform::Folded {
+            even: block((h + 1, modes - odd_modes), 0),
+            odd: block((h, odd_modes), modes - odd_modes),
+        }
+    }
+
+    /// The modes, node down and mode across.
+    pub fn vectors(&self) -> Array2<f64> {
+        match self {
+            Transform::Whole(vectors) => vectors.clone(),
+            Transform::Folded { even, odd } => {
+                let (h, evens) = (odd.nrows(), even.ncols());
+                Array2::from_shape_fn((2 * h + 1, evens + odd.ncols()), |(k, a)| {
+                    let (side, sign) = if k > h { (2 * h - k, -1.0) } else { (k, 1.0) };
+                    match (a < evens, side == h) {
+                        (true, _) => even[[side, a]],
+                        (false, true) => 0.0,
+                        (false, false) => sign * odd[[side, a - evens]],
+                    }
+                })
+            }
+        }
+    }
+
+    /// Modal coefficients Q^T v of nodal columns: (nodes x m) to (modes x m). Costs m times nodes times modes
+    /// multiplications, half of that where the modes fold.
     pub fn forward(&self, nodal: ArrayView2<f64>, mut modal: ArrayViewMut2<f64>) {
-        let Some(Folded { even, odd }) = &self.folded else {
-            return multiply(self.vectors.t(), nodal, modal);
+        let (even, odd) = match self {
+            Transform::Whole(vectors) => return multiply(vectors.t(), nodal, modal),
+            Transform::Folded { even, odd } => (even, odd),
         };
-        let h = odd.nrows();
-        let n = self.len();
+        let (h, n) = (odd.nrows(), nodal.nrows());
         let mut plus = Array2::zeros((h + 1, nodal.ncols()));
         let mut minus = Array2::zeros((h, nodal.ncols()));
         for k in 0..h {
@@ -139,18 +188,19 @@ impl Modes {
             );
         }
         plus.row_mut(h).assign(&nodal.row(h));
-        let (first, second) = modal.view_mut().split_at(Direction(0), h + 1);
+        let (first, second) = modal.view_mut().split_at(Direction(0), even.ncols());
         multiply(even.t(), plus.view(), first);
         multiply(odd.t(), minus.view(), second);
     }
 
-    /// Nodal values Q c of modal columns: (modes x m) to (nodes x m); same cost as [`Modes::forward`].
+    /// Nodal values Q c of modal columns: (modes x m) to (nodes x m); same cost as [`Transform::forward`].
     pub fn backward(&self, modal: ArrayView2<f64>, mut nodal: ArrayViewMut2<f64>) {
-        let Some(Folded { even, odd }) = &self.folded else {
-            return multiply(self.vectors.view(), modal, nodal);
+        let (even, odd) = match self {
+            Transform::Whole(vectors) => return multiply(vectors.view(), modal, nodal),
+            Transform::Folded { even, odd } => (even, odd),
         };
         let h = odd.nrows();
-        let (first, second) = modal.split_at(Direction(0), h + 1);
+        let (first, second) = modal.split_at(Direction(0), even.ncols());
         let mut plus = Array2::zeros((h + 1, modal.ncols()));
         let mut minus = Array2::zeros((h, modal.ncols()));
         multiply(even.view(), first, plus.view_mut());
@@ -200,7 +250,7 @@ mod tests {
             for (k, &o) in stiffness.off.iter().enumerate() {
                 (stiff[[k, k + 1]], stiff[[k + 1, k]]) = (o, o);
             }
-            let q = &modes.vectors;
+            let q = &modes.transform.vectors();
             let mass = Array2::from_diag(&ndarray::Array1::from(masses.clone()));
             let one = q.t().dot(&mass).dot(q);
             let values = q.t().dot(&stiff).dot(q);
@@ -214,8 +264,8 @@ mod tests {
             }
             let v = Array2::from_shape_fn((n, 3), |(k, c)| ((k * 7 + c * 5) % 11) as f64 - 4.0);
             let (mut modal, mut back) = (Array2::zeros((n, 3)), Array2::zeros((n, 3)));
-            modes.forward(mass.dot(&v).view(), modal.view_mut());
-            modes.backward(modal.view(), back.view_mut());
+            modes.transform.forward(mass.dot(&v).view(), modal.view_mut());
+            modes.transform.backward(modal.view(), back.view_mut());
             assert!((&back - &v).iter().all(|d| d.abs() < 1e-9));
         }
     }

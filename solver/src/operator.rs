@@ -19,7 +19,7 @@ pub type Matrix = CsMatI<f64, u32, usize>;
 
 /// Blocks of rows, the units of parallel work: enough for the threads of a workstation, few enough that the planes
 /// that neighbouring blocks both need do not cost much.
-const BLOCKS: usize = 16;
+const BLOCKS: usize = 8;
 
 /// Pairs of axes that a tilt couples.
 const PAIRS: [[usize; 2]; 3] = [[0, 1], [0, 2], [1, 2]];
@@ -120,9 +120,9 @@ fn row(planes: [Option<&Plane<NodeEnergy>>; 3], at: [usize; 3], shape: [usize; 3
         planes[(1 + s[0]) as usize].map_or(&nothing, |plane| &plane[here as usize])
     };
     let plus = |a: [isize; 3], b: [isize; 3]| [a[0] + b[0], a[1] + b[1], a[2] + b[2]];
-    let mut entries = [0.0; 27];
     let own = energy([0; 3]);
     let centre = slot([0; 3]);
+    let mut coupled = own.coupled;
     for axis in 0..3 {
         for side in (0..2).filter(|&side| exists(axis, side)) {
             let to = step(axis, side);
@@ -130,6 +130,7 @@ fn row(planes: [Option<&Plane<NodeEnergy>>; 3], at: [usize; 3], shape: [usize; 3
             let weight = own.edge[axis][side] + other.edge[axis][1 - side];
             entries[centre] += weight;
             entries[slot(to)] -= weight;
+            coupled |= other.coupled;
             if !other.coupled {
                 continue;
             }
@@ -159,7 +160,7 @@ fn row(planes: [Option<&Plane<NodeEnergy>>; 3], at: [usize; 3], shape: [usize; 3
             }
         }
     }
-    entries
+    coupled
 }
 
 /// Entries in a row of a tilted bench without roll, nearly enough: what space is set aside for.
@@ -197,9 +198,11 @@ fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Matrix> {
         for j in 0..ny {
             for k in 0..nz {
                 let node = grid.index(middle as usize, j, k);
-                let mut entries = row(planes, [middle as usize, j, k], shape);
+                let mut entries = [0.0; 27];
+                let coupled = row(planes, [middle as usize, j, k], shape, &mut entries);
                 entries[slot([0; 3])] += robin[node];
-                for (n, &value) in entries.iter().enumerate() {
+                let mut keep = |n: usize| {
+                    let value = entries[n];
                     if value != 0.0 {
                         let step = |n: usize, stride: usize| (n as isize - 1) * stride as isize;
                         let column =
@@ -207,6 +210,11 @@ fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Matrix> {
                         columns.push(column as u32);
                         values.push(value);
                     }
+                };
+                if coupled {
+                    (0..27).for_each(&mut keep);
+                } else {
+                    UPRIGHT.into_iter().for_each(&mut keep);
                 }
                 starts.push(columns.len());
             }

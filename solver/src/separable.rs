@@ -39,16 +39,13 @@ impl Columns {
         }
         let mut pivots = Array3::zeros((x.len(), nz, y.len()));
         pivots.axis_iter_mut(Direction(0)).into_par_iter().enumerate().for_each(|(a, mut slab)| {
-            for (b, mut column) in slab.axis_iter_mut(Direction(1)).enumerate() {
-                let lambda = x.values[a] + y.values[b];
-                let mut last = 0.0;
-                for k in 0..nz {
-                    let mut pivot = stiffness.diagonal[k] + lambda * masses[k];
-                    if k > 0 {
-                        pivot -= stiffness.off[k - 1].powi(2) * last;
-                    }
-                    last = 1.0 / pivot;
-                    column[k] = last;
+            let mut last = vec![0.0; y.len()];
+            for (k, mut row) in slab.axis_iter_mut(Direction(0)).enumerate() {
+                let coupling = if k > 0 { stiffness.off[k - 1].powi(2) } else { 0.0 };
+                for ((pivot, last), lambda) in row.iter_mut().zip(&mut last).zip(&y.values) {
+                    *last =
+                        1.0 / (stiffness.diagonal[k] + (x.values[a] + lambda) * masses[k] - coupling * *last);
+                    *pivot = *last;
                 }
             }
         });
@@ -166,7 +163,7 @@ impl<const K: usize> Preconditioner<K> for Separable {
         let (first, second) = (&mut first[0], &mut second[0]);
         first.resize(nx * slab, 0.0);
         second.resize(nx * slab, 0.0);
-        along_x(r.as_flattened(), first, nx, |from, to| x.forward(from, to));
+        along_x(r.as_flattened(), first, nx, |from, to| x.transform.forward(from, to));
         let planes = hold.planes().to_vec();
         let lowest = planes[0];
         // Per mode along x: transform along y to rows (z, right-hand side) by modes, solve, keep the plate planes.
@@ -179,7 +176,7 @@ impl<const K: usize> Preconditioner<K> for Separable {
                 |scratch, (a, (nodal, modal))| {
                     let nodal = ArrayView2::from_shape((ny, nz * K), nodal).expect("a slab");
                     let rows = ArrayViewMut2::from_shape((nz * K, ny), modal).expect("a slab");
-                    y.forward(nodal, rows.reversed_axes());
+                    y.transform.forward(nodal, rows.reversed_axes());
                     scratch.copy_from_slice(modal);
                     columns.solve(a, scratch, K, lowest);
                     planes.iter().flat_map(|k| scratch[k * K * ny..(k + 1) * K * ny].to_vec()).collect()
@@ -200,10 +197,10 @@ impl<const K: usize> Preconditioner<K> for Separable {
                 columns.solve(a, modal, K, 0);
                 let rows = ArrayView2::from_shape((nz * K, ny), &*modal).expect("a slab");
                 let nodal = ArrayViewMut2::from_shape((ny, nz * K), nodal).expect("a slab");
-                y.backward(rows.reversed_axes(), nodal);
+                y.transform.backward(rows.reversed_axes(), nodal);
             },
         );
-        along_x(first, z.as_flattened_mut(), nx, |from, to| x.backward(from, to));
+        along_x(first, z.as_flattened_mut(), nx, |from, to| x.transform.backward(from, to));
         z.par_iter_mut().zip(fixed.par_iter()).for_each(|(z, &fixed)| {
             if fixed {
                 *z = [0.0; K];
