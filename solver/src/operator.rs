@@ -103,9 +103,17 @@ fn slot(step: [isize; 3]) -> usize {
     (9 * (step[0] + 1) + 3 * (step[1] + 1) + step[2] + 1) as usize
 }
 
-/// The row of node (i, j, k): its 27 possible entries, from the energies of three planes.
+/// The slots of an upright node: itself and its six neighbours.
+const UPRIGHT: [usize; 7] = [4, 10, 12, 13, 14, 16, 22];
 
-fn row(planes: [Option<&Plane<NodeEnergy>>; 3], at: [usize; 3], shape: [usize; 3]) -> [f64; 27] {
+/// The row of node (i, j, k), from the energies of three planes: adds to its 27 possible entries, and says whether
+/// more than the seven of an upright node may differ from zero.
+fn row(
+    planes: [Option<&Plane<NodeEnergy>>; 3],
+    at: [usize; 3],
+    shape: [usize; 3],
+    entries: &mut [f64; 27],
+) -> bool {
     let [_, ny, nz] = shape;
     let step = |axis: usize, side: usize| {
         let mut s = [0isize; 3];
