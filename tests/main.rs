@@ -1,1 +1,10 @@
-//! x
+//! All integration tests, in one binary.
+
+mod cases;
+mod coverage;
+mod discrete;
+mod ideal_limit;
+mod plates;
+mod strips;
+mod threads;
+mod wrench;

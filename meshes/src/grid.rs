@@ -211,9 +211,14 @@ impl Grid {
         [at[0] + by[0], at[1] + by[1], at[2] + by[2]]
     }
 
+    /// Whether the grid is a slab of unit width between insulating walls: a cross-section.
+    pub fn is_cross_section(&self) -> bool {
+        self.axes[1].len() == 2
+    }
+
     /// Whether force along y and torque about x and z vanish because the bench is its own mirror image.
     pub fn mirrored(&self) -> bool {
-        self.half || self.axes[1].len() == 2
+        self.half || self.is_cross_section()
     }
 
     /// What a quantity of the grid has to be multiplied with to be that of the whole arrangement.

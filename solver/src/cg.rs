@@ -36,7 +36,7 @@ pub struct Params {
 
 impl Default for Params {
     fn default() -> Self {
-        Params { tolerance: 1e-8, most_iterations: 500 }
+        Params { tolerance: 1e-8, most_iterations: 3000 }
     }
 }
 

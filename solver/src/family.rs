@@ -14,7 +14,7 @@ use crate::level::{Level, LevelParams};
 use crate::Error;
 
 /// Levels of the family: each is 4/3 or 3/2 of the one before.
-const LADDER: [u32; 9] = [2, 3, 4, 6, 8, 12, 16, 24, 32];
+const LADDER: [u32; 8] = [2, 3, 4, 6, 8, 12, 16, 24];
 /// Cells that the coarsest level of a triple needs along the plate between the narrow edge and the place where the
 /// gap has doubled. Set on tilted strips down to an edge gap of 5 % of the centre gap.
 const CELLS_AT_NARROW_EDGE: f64 = 5.5;
@@ -37,6 +37,8 @@ const FIRST_IN_THE_PLANE: f64 = 4.0;
 /// Solver tolerance: this part of the accuracy asked for, within these bounds.
 const TOLERANCE_PART: f64 = 1e-2;
 const TOLERANCE_RANGE: [f64; 2] = [1e-9, 1e-7];
+/// An accuracy that is suggested lies above what was reached by this factor, so that the same levels meet it.
+const SUGGESTION_MARGIN: f64 = 1.2;
 /// Memory for a node of the finest level, in bytes: matrix, fields and preconditioner together, measured.
 const BYTES_PER_NODE: u64 = 600;
 
@@ -220,6 +222,7 @@ impl Family {
             memory_bytes: nodes as u64 * BYTES_PER_NODE,
             force,
             torque,
+            suggestion: force.max(torque) * SUGGESTION_MARGIN,
         })
     }
 }
