@@ -1,1 +1,106 @@
-//! x
+//! Charge, force and torque of a hinged-plate electrostatic balance, from the command line.
+//!
+//! Raw arguments ([`arguments`]) become a checked job ([`assess`]), the job becomes a report, the report becomes a
+//! table ([`screen`]) or JSON ([`report_json`]). The physics is in `tiltgap-solver`, the geometry in `tiltgap-meshes`.
+
+pub mod arguments;
+pub mod assess;
+pub mod bench;
+pub mod caution;
+pub mod concise;
+pub mod document;
+pub mod error;
+#[cfg(test)]
+mod fixture;
+pub mod keys;
+pub mod memory;
+pub mod nearest;
+pub mod progress;
+pub mod quantity;
+pub mod report_json;
+pub mod schema;
+pub mod screen;
+pub mod settings;
+pub mod source;
+pub mod table;
+
+use std::ffi::OsString;
+use std::io::{Read, Write};
+use std::panic::{catch_unwind, AssertUnwindSafe};
+use std::time::Instant;
+
+use clap::Parser;
+
+use arguments::{Arguments, Command};
+use error::Error;
+
+/// Where input comes from and output goes.
+pub struct Streams<'a> {
+    /// For the bench `-`.
+    pub stdin: &'a mut dyn Read,
+    /// Results.
+    pub stdout: &'a mut dyn Write,
+    /// Everything else.
+    pub stderr: &'a mut (dyn Write + Send),
+    /// Whether standard error is a terminal, where progress is shown.
+    pub terminal: bool,
+}
+
+/// Runs the program and returns its exit code. `arguments` begins with the program's name, `begun` is when it started.
+///
+/// Results are written whole or not at all.
+pub fn run(
+    arguments: impl IntoIterator<Item = impl Into<OsString> + Clone>,
+    streams: &mut Streams,
+    begun: Instant,
+) -> u8 {
+    let arguments = match Arguments::try_parse_from(arguments) {
+        Ok(arguments) => arguments,
+        Err(usage) => {
+            let text = usage.render().to_string();
+            let written = if usage.use_stderr() {
+                streams.stderr.write_all(text.as_bytes())
+            } else {
+                write(streams.stdout, &text)
+            };
+            return match written {
+                Ok(()) if usage.use_stderr() => error::BAD_INPUT,
+                Ok(()) => error::GOOD,
+                Err(e) => Error::from(e).exit_code(),
+            };
+        }
+    };
+    // A panic is a mistake in the program; its message is already on standard error.
+    let done = catch_unwind(AssertUnwindSafe(|| command(&arguments.command, streams, begun)));
+    let message = match done {
+        Ok(Ok(())) => return error::GOOD,
+        Ok(Err(error)) if error.exit_code() == error::GOOD => return error::GOOD,
+        Ok(Err(error)) => (error.exit_code(), format!("tiltgap: {error}\n")),
+        Err(_) => (error::INTERNAL, "tiltgap: internal error; please report it with the bench file\n".into()),
+    };
+    // If even that cannot be written, the exit code has to do.
+    let _ = streams.stderr.write_all(message.1.as_bytes());
+    message.0
+}
+
+fn write(stdout: &mut dyn Write, text: &str) -> std::io::Result<()> {
+    stdout.write_all(text.as_bytes())?;
+    stdout.flush()
+}
+
+fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(), Error> {
+    let text = match command {
+        Command::Assess(arguments) => {
+            let job = assess::Job::new(arguments, streams.stdin)?;
+            let report = job.run(begun, streams.stderr, streams.terminal)?;
+            if arguments.json {
+                report_json::report_json(&report)?
+            } else {
+                screen::screen(&report)?
+            }
+        }
+        Command::Schema => format!("{:#}\n", schema::bench_schema()),
+        Command::Demo => source::DEMO.into(),
+    };
+    Ok(write(streams.stdout, &text)?)
+}

@@ -1,0 +1,148 @@
+//! The command line as it is typed. Texts stay texts here; [`Job`](crate::assess::Job) checks them.
+
+use std::path::PathBuf;
+
+use clap::{Args, Parser, Subcommand};
+
+const EXIT_CODES: &str = "\
+Exit codes:
+  0  good
+  1  the accuracy asked for was not reached, or the calculation did not converge
+  2  bad input: the bench, an option or the arrangement of the plates
+  3  internal error";
+
+const ABOUT_ASSESS: &str = "\
+Charge, force and hinge torque of a bench, with wedge (tilt) and fringe, beside the ideal formula.
+
+Results go to standard output, everything else to standard error. Uncertainties are numerical
+standard uncertainties; those of the gap, the tilt and the sizes are not in them.";
+
+const EXAMPLES: &str = "\
+Examples:
+  tiltgap assess                                  the built-in demo bench
+  tiltgap demo > bench.json                       a bench file to begin with
+  tiltgap assess bench.json --gap 4mm --tilt -2mrad
+  tiltgap assess bench.json --accuracy 1e-5 --json > result.json
+
+Directions: x runs along the plate length from the hinge to the free edge, y along the hinge axis,
+z up. Positive tilt raises the free (+x) edge, positive roll the +y edge.
+
+Units: lengths m, cm, mm, um, in; angles deg, rad, mrad, arcmin; voltage V, kV.";
+
+/// The whole command line.
+#[derive(Debug, Parser)]
+#[command(
+    name = "tiltgap",
+    version,
+    about = "For a hinged-plate electrostatic balance: charge, force and torque of a tilted gap with fringing,\n\
+             and how wrong the ideal capacitor formula is.",
+    after_help = EXIT_CODES
+)]
+pub struct Arguments {
+    /// What to do.
+    #[command(subcommand)]
+    pub command: Command,
+}
+
+/// What to do.
+#[derive(Debug, Subcommand)]
+pub enum Command {
+    /// Charge, force and hinge torque of a bench, beside the ideal formula.
+    #[command(long_about = ABOUT_ASSESS, after_help = EXIT_CODES, after_long_help = format!("{EXAMPLES}\n\n{EXIT_CODES}"))]
+    Assess(AssessArguments),
+    /// Print the JSON Schema of the bench file, for editors.
+    Schema,
+    /// Print the demo bench file, to begin with.
+    Demo,
+}
+
+/// Arguments of `assess`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct AssessArguments {
+    /// Bench file (JSON); `-` reads standard input. Without it the built-in demo bench is assessed.
+    #[arg(value_name = "BENCH")]
+    pub bench: Option<PathBuf>,
+
+    /// Gap at the centre of the upper plate, for example 4mm; replaces pose.gap.
+    #[arg(long, value_name = "LENGTH", allow_hyphen_values = true)]
+    pub gap: Option<String>,
+
+    /// Tilt, for example 0.4deg or -2mrad; positive raises the free (+x) edge; replaces pose.tilt.
+    #[arg(long, value_name = "ANGLE", allow_hyphen_values = true)]
+    pub tilt: Option<String>,
+
+    /// Roll, for example 0.1deg; positive raises the +y edge; replaces pose.roll.
+    #[arg(long, value_name = "ANGLE", allow_hyphen_values = true)]
+    pub roll: Option<String>,
+
+    /// Voltage of the upper plate against the lower one, for example 400V; replaces drive.voltage.
+    #[arg(long, value_name = "VOLTAGE", allow_hyphen_values = true)]
+    pub voltage: Option<String>,
+
+    /// Wiring: grounded [default] or floating; replaces drive.connection.
+    ///
+    /// grounded: lower plate and surroundings at 0 V, upper plate at the voltage.
+    /// floating: the voltage between the plates, which carry no net charge.
+    #[arg(long, value_name = "WIRING", allow_hyphen_values = true, verbatim_doc_comment)]
+    pub connection: Option<String>,
+
+    /// Largest relative standard uncertainty of force and torque, up to 0.1 [default: 1e-4].
+    #[arg(long, value_name = "NUMBER", allow_hyphen_values = true)]
+    pub accuracy: Option<String>,
+
+    /// Cross-section of very wide plates: all results per metre of width (2-D).
+    #[arg(long)]
+    pub per_metre: bool,
+
+    /// Write JSON in SI units instead of tables.
+    #[arg(long)]
+    pub json: bool,
+
+    /// Threads to compute with, 1 to 64 [default: all cores]. The result does not depend on it.
+    #[arg(long, value_name = "N", allow_hyphen_values = true)]
+    pub threads: Option<String>,
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use clap::CommandFactory;
+
+    fn assess(args: &[&str]) -> Result<AssessArguments, clap::Error> {
+        let all = ["tiltgap", "assess"].iter().chain(args);
+        Arguments::try_parse_from(all).map(|a| match a.command {
+            Command::Assess(a) => a,
+            other => panic!("{other:?}"),
+        })
+    }
+
+    #[test]
+    fn clap_finds_the_definition_sound() {
+        Arguments::command().debug_assert();
+    }
+
+    #[test]
+    fn negative_quantities_are_values() {
+        let a = assess(&["--tilt", "-2mrad", "-", "--gap=4mm", "--voltage", "-1e2 V"]).unwrap();
+        assert_eq!(a.tilt.as_deref(), Some("-2mrad"));
+        assert_eq!(a.voltage.as_deref(), Some("-1e2 V"));
+        assert_eq!(a.bench, Some("-".into()));
+        assert!(!a.json && !a.per_metre && a.accuracy.is_none());
+    }
+
+    #[test]
+    fn what_is_not_an_option_is_refused() {
+        for args in [&["--tlit", "1deg"][..], &["a", "b"], &["--gap"], &["--gap", "1mm", "--gap", "2mm"]] {
+            assert!(assess(args).is_err(), "{args:?}");
+        }
+    }
+
+    #[test]
+    fn help_fits_the_terminal() {
+        let mut command = Arguments::command();
+        let assess = command.find_subcommand_mut("assess").unwrap();
+        let help = assess.render_long_help().to_string();
+        assert!(help.contains("Exit codes:") && help.contains("-2mrad"));
+        assert!(help.lines().all(|l| l.chars().count() <= 100), "{help}");
+    }
+}
