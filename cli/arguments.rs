@@ -59,38 +59,51 @@ pub enum Command {
 /// Arguments of `assess`.
 #[derive(Clone, Debug, Default, Args)]
 pub struct AssessArguments {
-    /// Bench file (JSON); `-` reads standard input. Without it the built-in demo bench is assessed.
+    /// Bench file (JSON); `-` reads standard input. Without it: the built-in demo bench.
     #[arg(value_name = "BENCH")]
     pub bench: Option<PathBuf>,
 
-    /// Gap at the centre of the upper plate, for example 4mm; replaces pose.gap.
+    /// Gap at the centre of the upper plate, for example 4mm.
+    ///
+    /// Replaces pose.gap of the bench.
     #[arg(long, value_name = "LENGTH", allow_hyphen_values = true)]
     pub gap: Option<String>,
 
-    /// Tilt, for example 0.4deg or -2mrad; positive raises the free (+x) edge; replaces pose.tilt.
+    /// Tilt, for example -2mrad; positive raises the free (+x) edge.
+    ///
+    /// Replaces pose.tilt of the bench.
     #[arg(long, value_name = "ANGLE", allow_hyphen_values = true)]
     pub tilt: Option<String>,
 
-    /// Roll, for example 0.1deg; positive raises the +y edge; replaces pose.roll.
+    /// Roll, for example 0.1deg; positive raises the +y edge.
+    ///
+    /// Replaces pose.roll of the bench.
     #[arg(long, value_name = "ANGLE", allow_hyphen_values = true)]
     pub roll: Option<String>,
 
-    /// Voltage of the upper plate against the lower one, for example 400V; replaces drive.voltage.
+    /// Voltage of the upper plate against the lower one, for example 400V.
+    ///
+    /// Replaces drive.voltage of the bench.
     #[arg(long, value_name = "VOLTAGE", allow_hyphen_values = true)]
     pub voltage: Option<String>,
 
-    /// Wiring: grounded [default] or floating; replaces drive.connection.
+    /// Wiring, grounded or floating [default: grounded].
     ///
     /// grounded: lower plate and surroundings at 0 V, upper plate at the voltage.
     /// floating: the voltage between the plates, which carry no net charge.
+    /// Replaces drive.connection of the bench.
     #[arg(long, value_name = "WIRING", allow_hyphen_values = true, verbatim_doc_comment)]
     pub connection: Option<String>,
 
-    /// Largest relative standard uncertainty of force and torque, up to 0.1 [default: 1e-4].
+    /// Relative standard uncertainty accepted [default: 1e-4].
+    ///
+    /// The largest one of force and torque, numerical part; above 0 and at most 0.1.
     #[arg(long, value_name = "NUMBER", allow_hyphen_values = true)]
     pub accuracy: Option<String>,
 
-    /// Cross-section of very wide plates: all results per metre of width (2-D).
+    /// Cross-section of very wide plates (2-D): results per metre of width.
+    ///
+    /// In open surroundings it needs the floating connection.
     #[arg(long)]
     pub per_metre: bool,
 
@@ -98,7 +111,9 @@ pub struct AssessArguments {
     #[arg(long)]
     pub json: bool,
 
-    /// Threads to compute with, 1 to 64 [default: all cores]. The result does not depend on it.
+    /// Threads to compute with, 1 to 64 [default: all cores].
+    ///
+    /// The result does not depend on it, to the last bit.
     #[arg(long, value_name = "N", allow_hyphen_values = true)]
     pub threads: Option<String>,
 }
@@ -141,8 +156,9 @@ mod tests {
     fn help_fits_the_terminal() {
         let mut command = Arguments::command();
         let assess = command.find_subcommand_mut("assess").unwrap();
-        let help = assess.render_long_help().to_string();
-        assert!(help.contains("Exit codes:") && help.contains("-2mrad"));
-        assert!(help.lines().all(|l| l.chars().count() <= 100), "{help}");
+        for help in [assess.render_help(), assess.render_long_help()].map(|h| h.to_string()) {
+            assert!(help.contains("Exit codes:") && help.contains("-2mrad"));
+            assert!(help.lines().all(|l| l.chars().count() <= 100), "{help}");
+        }
     }
 }

@@ -78,12 +78,14 @@ fn head(report: &Report) -> Result<String, NotANumber> {
     text.push('\n');
     let length = |group: &str, key: &str, si: f64| written(&given[group][key], si, "m");
     let plate = |group: &str, p: &tiltgap_meshes::Plate| -> Result<String, NotANumber> {
-        Ok(format!(
-            "{} x {} (length x width), thickness {}",
-            length(group, "length", p.length_m)?,
-            length(group, "width", p.width_m)?,
-            length(group, "thickness", p.thickness_m)?
-        ))
+        let long = length(group, "length", p.length_m)?;
+        let thick = length(group, "thickness", p.thickness_m)?;
+        Ok(if two_dimensional(job) {
+            format!("length {long}, very wide, thickness {thick}")
+        } else {
+            let wide = length(group, "width", p.width_m)?;
+            format!("{long} x {wide} (length x width), thickness {thick}")
+        })
     };
     let pose = &bench.pose;
     let angle = |key: &str, si: f64| written(&given["pose"][key], si, "deg");
@@ -164,7 +166,7 @@ fn rows(report: &Report) -> Vec<Row> {
             factor: a.factors.capacitance,
         },
         Row {
-            name: "Charge on the upper plate",
+            name: "Charge, upper plate",
             unit: "C",
             symbol: "k_C",
             ideal: a.ideal.capacitance_f * question.voltage_v,
@@ -172,7 +174,7 @@ fn rows(report: &Report) -> Vec<Row> {
             factor: a.factors.capacitance,
         },
         Row {
-            name: "Force towards the lower plate",
+            name: "Force, downwards",
             unit: "N",
             symbol: "k_F",
             ideal: a.ideal.force_n,
@@ -182,7 +184,7 @@ fn rows(report: &Report) -> Vec<Row> {
     ];
     if let (Some(torque), Some(ideal)) = (&a.torque_hinge_nm, a.ideal.torque_nm) {
         rows.push(Row {
-            name: "Torque about the hinge, closing",
+            name: "Torque at hinge, closing",
             unit: "N m",
             symbol: "k_T",
             ideal,
@@ -195,7 +197,7 @@ fn rows(report: &Report) -> Vec<Row> {
 
 fn main_table(report: &Report) -> Result<String, NotANumber> {
     let mut table = Table::new(2);
-    table.row(["", "", "ideal", "wedge only", "wedge and fringe", "factor", ""]);
+    table.row(["", "", "ideal", "wedge only", "wedge and fringe", "factor k", ""]);
     for row in rows(report) {
         let Estimate { value, uncertainty } = row.full;
         let scale = Scale::suited(value.abs().max(uncertainty), &per_metre(&report.job, row.unit));
@@ -337,11 +339,11 @@ Hinge         arm 150 mm, height 0 mm
 Drive         400 V on the upper plate; lower plate and surroundings at 0 V (grounded)
 Surroundings  open; relative permittivity 1.00054
 
-                                           ideal   wedge only   wedge and fringe        factor
-Capacitance                       pF      20.000       20.200          26.000(2)   1.30000(10)   k_C
-Charge on the upper plate         nC      8.0000       8.0800         10.4000(8)   1.30000(10)   k_C
-Force towards the lower plate     µN     400.000      408.000         450.000(3)   1.125000(8)   k_F
-Torque about the hinge, closing   µN m   60.0000      59.4000        66.0000(13)    1.10000(2)   k_T
+                                    ideal   wedge only   wedge and fringe      factor k
+Capacitance                pF      20.000       20.200          26.000(2)   1.30000(10)   k_C
+Charge, upper plate        nC      8.0000       8.0800         10.4000(8)   1.30000(10)   k_C
+Force, downwards           µN     400.000      408.000         450.000(3)   1.125000(8)   k_F
+Torque at hinge, closing   µN m   60.0000      59.4000        66.0000(13)    1.10000(2)   k_T
 
 Error of the ideal formula     in all   by the wedge   by the fringe
 Capacitance, charge          -23.08 %        -0.77 %        -22.31 %
@@ -380,7 +382,7 @@ Limit of these levels, observed order 1.92; accuracy asked for 1e-4; 0.31 s on 2
         let text = screen(&r).unwrap();
         assert!(text.contains("Hinge         none in the bench"));
         assert!(!text.contains("Error of the ideal formula") && !text.contains("k_T"));
-        assert!(text.lines().any(|l| l.starts_with("Force towards the lower plate") && l.ends_with('-')));
+        assert!(text.lines().any(|l| l.starts_with("Force, downwards") && l.ends_with('-')));
     }
 
     #[test]
@@ -389,8 +391,15 @@ Limit of these levels, observed order 1.92; accuracy asked for 1e-4; 0.31 s on 2
         r.job.question.arrangement.dimensions = Dimensions::Two;
         r.job.question.connection = Connection::Floating;
         let text = screen(&r).unwrap();
-        for part in ["pF/m", "nC/m", "µN/m", "µN m/m", "free (+x) 4.3840 mm\n", "no net charge (floating)"]
-        {
+        for part in [
+            "length 110 mm, very wide",
+            "pF/m",
+            "nC/m",
+            "µN/m",
+            "µN m/m",
+            "free (+x) 4.3840 mm\n",
+            "no net charge (floating)",
+        ] {
             assert!(text.contains(part), "{part}");
         }
     }
