@@ -4,7 +4,7 @@
 use tiltgap_meshes::{GridOptions, Sideways};
 use tiltgap_solver::{cg, Error, Level, LevelParams};
 
-use crate::cases::{family, name, number, plates, thin, triple};
+use crate::cases::{family, name, number, plates, triple};
 
 /// The grid family of the reference implementation.
 const PLAIN: GridOptions = GridOptions { sideways: Sideways::Linear, far: 20.0 };

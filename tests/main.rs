@@ -1,6 +1,7 @@
 //! All integration tests, in one binary.
 
 mod cases;
+mod cli;
 mod coverage;
 mod discrete;
 mod ideal_limit;

@@ -7,7 +7,7 @@
 
 use rayon::prelude::*;
 
-use crate::field::{dots, in_order, Field, CHUNK};
+use crate::field::{dots, Field, CHUNK};
 use crate::Error;
 
 /// A symmetric positive definite operator on the free nodes.
@@ -104,20 +104,7 @@ pub fn conjugate_gradient<const K: usize>(
         });
         info.inner_iterations += m.apply(r, &mut z)?;
         info.applications += 1;
-        let both = |(z, (r, w)): (&[[f64; K]], (&[[f64; K]], &[[f64; K]]))| {
-            let mut sums = [[0.0; K]; 2];
-            for n in 0..z.len() {
-                for c in 0..K {
-                    sums[0][c] += z[n][c] * r[n][c];
-                    sums[1][c] += z[n][c] * w[n][c];
-                }
-            }
-            sums
-        };
-        let parts: Vec<[[f64; K]; 2]> =
-            z.par_chunks(CHUNK).zip(r.par_chunks(CHUNK).zip(w.par_chunks(CHUNK))).map(both).collect();
-        let new = in_order(parts.iter().map(|p| p[0]).collect());
-        let zw = in_order(parts.iter().map(|p| p[1]).collect());
+        let (new, zw) = (dots(r, &z), dots(&z, &w));
         let turn: [f64; K] =
             std::array::from_fn(|c| if rz[c] > 0.0 { -step[c] * zw[c] / rz[c] } else { 0.0 });
         p.par_chunks_mut(CHUNK).zip(z.par_chunks(CHUNK)).for_each(|(p, z)| {

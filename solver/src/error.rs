@@ -27,7 +27,7 @@ pub enum Error {
     /// The error bar on the finest affordable level is larger than asked for.
     #[error(
         "the accuracy {asked:.1e} was not reached: at level {level} ({nodes} nodes, {memory_bytes} bytes) the relative \
-         standard uncertainty is {force:.1e} for the force and {torque:.1e} for the torque; ask for an accuracy of {suggestion:.0e} or above"
+         standard uncertainty is {force:.1e} for the force and {torque:.1e} for the torque; ask for no less than that"
     )]
     AccuracyNotReached {
         /// The accuracy asked for.
@@ -42,7 +42,5 @@ pub enum Error {
         force: f64,
         /// Relative standard uncertainty reached for the torque.
         torque: f64,
-        /// An accuracy that can be had.
-        suggestion: f64,
     },
 }

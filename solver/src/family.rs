@@ -37,8 +37,6 @@ const FIRST_IN_THE_PLANE: f64 = 4.0;
 /// Solver tolerance: this part of the accuracy asked for, within these bounds.
 const TOLERANCE_PART: f64 = 1e-2;
 const TOLERANCE_RANGE: [f64; 2] = [1e-9, 1e-7];
-/// An accuracy that is suggested lies above what was reached by this factor, so that the same levels meet it.
-const SUGGESTION_MARGIN: f64 = 1.2;
 /// Memory for a node of the finest level, in bytes: matrix, fields and preconditioner together, measured.
 const BYTES_PER_NODE: u64 = 600;
 
@@ -222,7 +220,6 @@ impl Family {
             memory_bytes: nodes as u64 * BYTES_PER_NODE,
             force,
             torque,
-            suggestion: force.max(torque) * SUGGESTION_MARGIN,
         })
     }
 }
