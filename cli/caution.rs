@@ -12,7 +12,7 @@ const BREAKDOWN_V_M: f64 = 3e6;
 /// Field from which a caution is given, in V/m: edges, burrs and dust lower the breakdown by a factor 2 to 3 (common
 /// practice, no source).
 const CAUTION_V_M: f64 = 1e6;
-/// Limit of the voltage between accessible parts in normal condition, in V d.c. (IEC 61010-1).
+/// Limit of the voltage between accessible parts in normal condition, in V d.c. ([IEC61010-1], 6.3; from memory).
 const ACCESSIBLE_V: f64 = 60.0;
 /// Part of the centre gap below which an edge counts as nearly touching.
 const NEARLY_TOUCHING: f64 = 0.1;

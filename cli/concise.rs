@@ -1,6 +1,6 @@
 //! Values with an uncertainty in concise notation: 1.0462(3), 22.310(14) pF.
 //!
-//! The digits in parentheses are the standard uncertainty in units of the last digits shown ([GUM], 7.2.2). The
+//! The digits in parentheses are the standard uncertainty in units of the last digits shown (\[GUM2008\], 7.2.2). The
 //! uncertainty gets two digits if the first is a 1 and one otherwise, so that rounding changes it by at most a
 //! quarter.
 
@@ -50,7 +50,7 @@ fn last_digit(value: f64, uncertainty: f64) -> Option<i32> {
     Some(first_digit(rounded.parse().unwrap_or(uncertainty)) - i32::from(two))
 }
 
-/// Number of decimals to which a value of this uncertainty is known; at most those of [`MOST_DIGITS`] digits.
+/// Number of decimals to which a value of this uncertainty is known; at most those of twelve digits.
 pub fn decimals(value: f64, uncertainty: f64) -> usize {
     let least = if value == 0.0 { 0 } else { first_digit(value.abs()) - MOST_DIGITS + 1 };
     (-last_digit(value, uncertainty).unwrap_or(least)).max(0) as usize

@@ -7,9 +7,9 @@ use serde_json::{json, Map, Value};
 
 use crate::quantity::Dimension;
 
-/// Relative permittivity of dry air at 20 °C and 1013.25 hPa, static: the refractivity N = 77.6 p/T (p in hPa, T in K)
-/// of Smith & Weintraub, Proc. IRE 41 (1953) 1035, is 268.2, so that (1 + N 1e-6)^2 = 1.000 536. Moist air has up to
-/// 1e-4 more by the same formula.
+/// Relative permittivity of dry air at 20 °C and 1013.25 hPa, static: the refractivity N = 77.6/T (p + 4810 e/T) of
+/// \[SmithWeintraub1953\] (p and e in hPa, T in K, good to 0.5 %) is 268, so that (1 + N 1e-6)^2 = 1.000 537(3). Half
+/// saturated air has 1e-4 more by the same formula.
 pub const PERMITTIVITY_OF_AIR: f64 = 1.000_54;
 /// Largest relative permittivity accepted: above every liquid and most ceramics.
 const PERMITTIVITY_LIMIT: f64 = 1e5;
@@ -326,9 +326,11 @@ mod tests {
 
     #[test]
     fn the_permittivity_of_air_follows_from_its_source() {
-        // Smith & Weintraub 1953: N = 77.6 p/T, with 1013.25 hPa and 293.15 K.
-        let refractivity: f64 = 77.6 * 1013.25 / 293.15;
-        let permittivity = (1.0 + refractivity * 1e-6).powi(2);
-        assert!((permittivity - PERMITTIVITY_OF_AIR).abs() < 5e-6);
+        // [SmithWeintraub1953] with T = °C + 273, as there.
+        let permittivity = |p: f64, e: f64| (1.0 + 77.6e-6 / 293.0 * (p + 4810.0 * e / 293.0)).powi(2);
+        assert!((permittivity(1013.25, 0.0) - PERMITTIVITY_OF_AIR).abs() < 5e-6);
+        // Half of the saturation pressure of water at 20 °C, 23.4 hPa.
+        let moist = permittivity(1013.25, 11.7) - permittivity(1013.25, 0.0);
+        assert!((moist - 1e-4).abs() < 1e-5);
     }
 }

@@ -1,7 +1,7 @@
 //! The known word nearest to a mistyped one.
 //!
 //! Distance is the number of single-letter slips: a letter too many, one missing, one wrong, or two neighbours
-//! exchanged (optimal string alignment [Damerau64]).
+//! exchanged (optimal string alignment \[Damerau1964\]).
 
 /// Number of slips between two words. Cost: product of the lengths.
 pub fn slips(a: &str, b: &str) -> usize {

@@ -358,8 +358,16 @@ fn report_or_sentence(arguments: &[&str], stdin: &[u8]) -> Result<(), TestCaseEr
     Ok(())
 }
 
+/// Cases of a property in which most cases are solved, and in which hardly any are.
+const SOLVED: u32 = 24;
+const REFUSED: u32 = 128;
+
+fn config(cases: u32) -> ProptestConfig {
+    ProptestConfig { cases, failure_persistence: None, ..ProptestConfig::default() }
+}
+
 proptest! {
-    #![proptest_config(ProptestConfig { cases: 64, failure_persistence: None, ..ProptestConfig::default() })]
+    #![proptest_config(config(SOLVED))]
 
     #[test]
     fn any_bench_gives_a_report_or_a_sentence(
@@ -376,6 +384,11 @@ proptest! {
         });
         report_or_sentence(&["assess", "-", "--per-metre", "--accuracy", "0.1"], bench.to_string().as_bytes())?;
     }
+
+}
+
+proptest! {
+    #![proptest_config(config(REFUSED))]
 
     #[test]
     fn any_text_gives_a_sentence(text in "\\PC{0,40}") {
