@@ -5,7 +5,8 @@ use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose, Surroundings};
 use tiltgap_solver::{Connection, Hinge, Question};
 
 use crate::document::Node;
-use crate::settings::{KeyError, Origin, Settings};
+use crate::key_error::KeyError;
+use crate::settings::{Origin, Settings};
 use crate::source::{Source, SourceError};
 
 /// Why there is no bench.

@@ -12,6 +12,7 @@ pub mod document;
 pub mod error;
 #[cfg(test)]
 mod fixture;
+pub mod key_error;
 pub mod keys;
 pub mod memory;
 pub mod nearest;
