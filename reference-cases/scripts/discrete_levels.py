@@ -88,10 +88,12 @@ class Grid:
         at = lambda ax, v: int(np.argmin(np.abs(ax - v)))
         ylo = lambda b, y0: 0 if g.half else at(g.y, y0 - b / 2)
         g.lo = (at(g.x, -c["a1"] / 2), at(g.x, c["a1"] / 2), ylo(c["b1"], 0), at(g.y, c["b1"] / 2))
-        g.up = (at(g.x, c["dx"] - c["a2"] / 2), at(g.x, c["dx"] + c["a2"] / 2), ylo(c["b2"], c["dy"]), at(g.y, c["dy"] + c["b2"] / 2))
+        g.up = (at(g.x, c["dx"] - c["a2"] / 2), at(g.x, c["dx"] + c["a2"] / 2),
+                ylo(c["b2"], c["dy"]), at(g.y, c["dy"] + c["b2"] / 2))
         g.shape = (len(g.x), len(g.y), len(g.z))
         z = g.z
-        g.B = np.where(z <= 0, 0, np.where(z <= c["d"], z / c["d"], np.where(z <= up[-1], 1.0, 1 - (z - up[-1]) / (z[-1] - up[-1]))))
+        above = np.where(z <= up[-1], 1.0, 1 - (z - up[-1]) / (z[-1] - up[-1]))
+        g.B = np.where(z <= 0, 0, np.where(z <= c["d"], z / c["d"], above))
         px = np.clip(g.x, c["dx"] - c["a2"] / 2, c["dx"] + c["a2"] / 2) - c["dx"]
         py = np.clip(g.y, c["dy"] - c["b2"] / 2, c["dy"] + c["b2"] / 2) - c["dy"]
         pz = np.clip(z, c["d"], up[-1]) - c["d"]
@@ -201,7 +203,8 @@ class Separable:
                 for b in range(2):
                     N[..., f[a], f[b]] -= S[..., a, b]
             i0, i1, j0, j1 = box
-            s.boxes.append((slice(i0, i1 + 1), slice(j0, j1 + 1), slice(off, off + n), stiff(hx[i0:i1]), mass(hx[i0:i1]), stiff(hy[j0:j1]), mass(hy[j0:j1]), D, m))
+            s.boxes.append((slice(i0, i1 + 1), slice(j0, j1 + 1), slice(off, off + n), stiff(hx[i0:i1]),
+                            mass(hx[i0:i1]), stiff(hy[j0:j1]), mass(hy[j0:j1]), D, m))
         s.Nf = N
 
     def tri(s, r):
@@ -229,7 +232,8 @@ class Separable:
         w[:, :, s.faces] = m * s.bwd(np.einsum("abpq,abq->abp", s.Nf, s.fwd(m * v[:, :, s.faces])))
         for ix, iy, ik, Dx, mx, Dy, my, Dz, mz in s.boxes:
             u = v[ix, iy, ik]
-            w[ix, iy, ik] += (np.einsum("ij,jkl->ikl", Dx, u) * my[:, None] * mz + np.einsum("ij,kjl->kil", Dy, u) * mx[:, None, None] * mz
+            w[ix, iy, ik] += (np.einsum("ij,jkl->ikl", Dx, u) * my[:, None] * mz
+                              + np.einsum("ij,kjl->kil", Dy, u) * mx[:, None, None] * mz
                               + np.einsum("ij,klj->kli", Dz, u) * mx[:, None, None] * my[:, None])
         return w * s.mask
 

@@ -1,0 +1,165 @@
+"""Validates every file of reference cases, and recomputes the cheap closed forms.
+
+    python check.py
+
+* against schema.json; file name = family; names of cases unique; every value defined under `quantities`, with an
+  uncertainty or spread of the same shape; scripts present; every [Key] of the files, the
+  scripts and the Rust sources in bibliography.md, every entry there used
+* strips-parallel, discs, pull-in, wedge-ideal, cross-capacitance, guard-gaps and closed-domains in full, with a second
+  route to the wedge formulas and to the rectangle
+* figures that two files have in common: squares with plates, the 180 degree wedge with coplanar strips, hinged strips with
+  tip rise 0 with parallel strips, parallel strips with strips.json
+
+One line per item; exit 1 if something is wrong. Takes half a minute.
+"""
+import os
+import re
+import sys
+from types import SimpleNamespace
+
+import jsonschema
+import mpmath as mp
+import numpy as np
+
+import closed_domains
+import cross_capacitance
+import discs
+import guard_gaps
+import pull_in
+import store
+import strips_parallel
+import wedge_ideal
+
+KEY = re.compile(r"\[([A-Z][A-Za-z]*[0-9]{4})\]")
+failures = []
+
+
+def verdict(ok, text):
+    print(("ok     " if ok else "WRONG  ") + text, flush=True)
+    if not ok:
+        failures.append(text)
+
+
+def families():
+    return sorted(f[:-5] for f in os.listdir(store.FOLDER) if f.endswith(".json") and f != "schema.json")
+
+
+def problems(family, doc):
+    """what the schema cannot say"""
+    if doc["family"] != family:
+        yield f"family {doc['family']} in the file {family}.json"
+    names = [c["name"] for c in doc["cases"]]
+    if len(set(names)) < len(names):
+        yield "two cases of one name"
+    for key in doc.get("kinds", {}):
+        if key not in doc["quantities"]:
+            yield f"kind of an unknown quantity {key}"
+    for script in doc["scripts"]:
+        if not os.path.exists(os.path.join(store.FOLDER, "scripts", script)):
+            yield f"no script {script}"
+    for case in doc["cases"]:
+        bounds = case.get("uncertainty", case.get("spread"))
+        if set(bounds) != set(case["value"]):
+            yield f"{case['name']}: uncertainty or spread does not match the values"
+            continue
+        for key, value in case["value"].items():
+            if key not in doc["quantities"]:
+                yield f"{case['name']}: {key} is not defined"
+            if np.shape(value) != np.shape(bounds[key]):
+                yield f"{case['name']}: uncertainty or spread of {key} has another shape"
+            elif np.min(bounds[key]) < 0:
+                yield f"{case['name']}: negative uncertainty or spread of {key}"
+        for key, text in case.get("digits", {}).items():
+            if float(text) != case["value"][key]:
+                yield f"{case['name']}: digits and value of {key} differ"
+
+
+def check_files(docs):
+    schema = store.load("schema")
+    jsonschema.Draft202012Validator.check_schema(schema)
+    validator = jsonschema.Draft202012Validator(schema)
+    cited = set()
+    for family, doc in docs.items():
+        wrong = [f"{'/'.join(map(str, e.absolute_path))}: {e.message[:100]}" for e in validator.iter_errors(doc)]
+        wrong = wrong or list(problems(family, doc))
+        verdict(not wrong, f"{family}: {len(doc['cases'])} cases" + "".join("\n         " + w for w in wrong[:10]))
+        cited |= set(KEY.findall(store.pretty(doc)))
+    with open(os.path.join(store.FOLDER, "bibliography.md"), encoding="utf-8") as file:
+        listed = set(re.findall(r"^\| \[([A-Za-z0-9]+)\]", file.read(), re.M))
+    for folder, inner, names in os.walk(os.path.join(store.FOLDER, "..")):
+        inner[:] = [d for d in inner if d != "target" and not d.startswith(".")]
+        for name in names:
+            if name.endswith((".py", ".rs")):
+                with open(os.path.join(folder, name), encoding="utf-8") as file:
+                    cited |= set(KEY.findall(file.read()))
+    verdict(cited == listed, f"bibliography: {len(listed)} entries, missing {sorted(cited - listed)}, "
+                             f"unused {sorted(listed - cited)}")
+
+
+def check_recomputed(docs):
+    for family, module in (("strips-parallel", strips_parallel), ("discs", discs), ("pull-in", pull_in),
+                           ("wedge-ideal", wedge_ideal), ("cross-capacitance", cross_capacitance),
+                           ("guard-gaps", guard_gaps), ("closed-domains", closed_domains)):
+        worst, count = 0.0, 0
+        for case in docs[family]["cases"]:
+            new = {k: store.plain(v) for k, v in module.compute(case, SimpleNamespace()).items()}
+            count += len(new)
+            worst = max(worst, *(store.worst(v, case["value"][k], case["uncertainty"][k]) for k, v in new.items()))
+        verdict(worst <= 1, f"{family}: {count} values recomputed, worst difference {worst:.2g} of the uncertainty")
+
+
+def check_second_routes():
+    with mp.workdps(30):
+        far = 0
+        for beta in map(mp.mpf, ("-0.5", "0.05", "0.9")):
+            a, b = wedge_ideal.lamella(beta, mp.mpf(2)), wedge_ideal.lamella_by_quadrature(beta, mp.mpf(2))
+            far = max(far, *(abs(x / y - 1) for x, y in zip(a, b)))
+        verdict(far < mp.mpf("1e-20"), f"lamellas against quadrature: {float(far):.0e}")
+        q, t = mp.mpf(2), mp.radians(5)
+        _, force, torque = wedge_ideal.sector(mp.mpf(1), q, t)
+        by_angle = -mp.diff(lambda s: wedge_ideal.sector(mp.mpf(1), q, s)[0], t) / 2
+        by_load = mp.quad(lambda r: 1 / (2 * (t * r) ** 2), [1, q])
+        far = max(abs(by_angle / torque - 1), abs(by_load / force - 1))
+        verdict(far < mp.mpf("1e-12"), f"ideal sector against derivative and integral: {float(far):.0e}")
+        far = max(abs(x / y - 1) for a in (1, 2) for x, y in
+                  zip(cross_capacitance.rectangle(mp.mpf(a)), cross_capacitance.rectangle_by_series(mp.mpf(a))))
+        verdict(far < mp.mpf("1e-20"), f"cross-capacitance of rectangles against the series: {float(far):.0e}")
+
+
+def check_between_files(docs):
+    values = {f: {c["name"]: c["value"] for c in d["cases"]} for f, d in docs.items()}
+    far = 0
+    for gap in (0.1, 0.2):
+        plate, square = values["plates"][f"gap {gap:g}"], values["squares"][f"gap {gap:g}"]
+        scale = 2 * gap ** 2
+        far = max(far, abs(plate["capacitance_neutral"] * gap / square["capacitance_factor"] - 1),
+                  abs(plate["matrix"][1][1] * gap / square["capacitance_factor_grounded"] - 1),
+                  abs(-plate["force_neutral"][2] * scale / square["force_factor"] - 1),
+                  abs(-plate["force_grounded"][2] * scale / square["force_factor_grounded"] - 1))
+    verdict(far < 8e-6, f"squares against plates: {far:.1e}")
+    far = max(abs(v["capacitance"] / values["wedge-strips"]["opening 180 ratio " + name.split()[-1]]["capacitance"] - 1)
+              for name, v in values["closed-domains"].items() if name.startswith("coplanar"))
+    verdict(far < 1e-13, f"wedge strips at 180 degrees against coplanar strips: {far:.1e}")
+    far = max(abs(values["hinged-strips"][f"hinge gap {d:g} tip rise 0"]["capacitance_factor"]
+                  / values["strips-parallel"][f"gap {d:g}"]["capacitance_factor"] - 1) for d in (0.02, 0.05, 0.1, 0.2))
+    verdict(far < 1e-13, f"hinged strips with tip rise 0 against parallel strips: {far:.1e}")
+    far = 0
+    for d in (0.02, 0.05, 0.1, 0.2, 0.5):
+        a, b = values["strips"][f"tilted gap {d:g} tilt 0"], values["strips-parallel"][f"gap {d:g}"]
+        far = max(far, abs(a["capacitance"] / b["capacitance"] - 1), abs(-a["force_z"] * 2 * d * d / b["force_factor"] - 1))
+    verdict(far < 1e-14, f"strips against parallel strips: {far:.1e}")
+
+
+def main():
+    docs = {f: store.load(f) for f in families()}
+    check_files(docs)
+    check_recomputed(docs)
+    check_second_routes()
+    check_between_files(docs)
+    count = sum(len(c["value"]) for d in docs.values() for c in d["cases"])
+    print(f"{count} values in {len(docs)} files, {len(failures)} failure(s)")
+    sys.exit(1 if failures else 0)
+
+
+if __name__ == "__main__":
+    main()
