@@ -1,5 +1,7 @@
 //! Reading the reference cases, and what the tests on them share.
 
+use std::sync::OnceLock;
+
 use serde_json::Value;
 use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose, Surroundings};
 use tiltgap_solver::{assess, Assessment, Connection, Error, Estimate, Params, Question, EPS0};
@@ -79,6 +81,48 @@ pub fn solve(arrangement: Arrangement, connection: Connection, accuracy: f64) ->
     assess(&question, &Params { accuracy, ..Params::default() }, &mut |_| {})
 }
 
+/// A case and what came of it.
+pub type Solved = (Value, Result<Assessment, Error>);
+
+/// Accuracy that the program takes when none is asked for.
+pub const DEFAULT: f64 = 1e-4;
+
+/// All strip cases at the default accuracy, solved once for all tests.
+pub fn strips_at_default() -> &'static [Solved] {
+    static SOLVED: OnceLock<Vec<Solved>> = OnceLock::new();
+    SOLVED.get_or_init(|| strips_at(DEFAULT))
+}
+
+/// All strip cases at some accuracy.
+pub fn strips_at(accuracy: f64) -> Vec<Solved> {
+    let solve = |case: Value| {
+        let solved = solve(strips(&case), Connection::Floating, accuracy);
+        (case, solved)
+    };
+    family("strips").into_iter().map(solve).collect()
+}
+
+/// A plate case, how it is wired and what came of it.
+pub type SolvedPlates = (Value, Connection, Assessment);
+
+/// All thin plate cases in both connections at the default accuracy, solved once for all tests.
+pub fn plates_at_default() -> &'static [SolvedPlates] {
+    static SOLVED: OnceLock<Vec<SolvedPlates>> = OnceLock::new();
+    SOLVED.get_or_init(|| plates_at(DEFAULT))
+}
+
+/// All thin plate cases in both connections at some accuracy.
+pub fn plates_at(accuracy: f64) -> Vec<SolvedPlates> {
+    let mut all = Vec::new();
+    for case in family("plates").into_iter().filter(|case| thin(&plates(case))) {
+        for connection in [Connection::Floating, Connection::Grounded] {
+            let solved = solve(plates(&case), connection, accuracy);
+            all.push((case.clone(), connection, solved.unwrap_or_else(|e| panic!("{}: {e}", name(&case)))));
+        }
+    }
+    all
+}
+
 /// One number held against its reference.
 #[derive(Clone, Debug)]
 pub struct Check {
@@ -110,7 +154,11 @@ impl Check {
     /// combined standard uncertainties.
     pub fn assert_within(&self, limit: f64) {
         let relative = (self.off - self.open) / self.scale;
-        assert!(relative <= limit, "{self:?}: off by {relative:.2e}, {limit:.1e} allowed");
+        let Check { what, off, uncertainty, open, .. } = self;
+        let said = format!(
+            "{what}: off by {off:.2e} ({relative:.1e}), stated {uncertainty:.1e}, reference {open:.1e}"
+        );
+        assert!(relative <= limit, "{said}, allowed {limit:.1e}");
         assert!(
             self.off <= 3.0 * self.uncertainty.hypot(self.open),
             "{self:?}: not within three standard uncertainties"

@@ -1,32 +1,23 @@
 //! Thin rectangular plates in space against boundary elements (see `reference-cases/plates.json`).
 
-use tiltgap_solver::Connection;
-
-use crate::cases::{family, plate_checks, plates, solve, thin};
+use crate::cases::{plate_checks, plates_at, plates_at_default, SolvedPlates};
 
 /// Every thin case in both connections, within the limits for charges and for force and torque, beyond what the
 /// reference itself leaves open.
-fn all_within(accuracy: f64, charge_limit: f64, force_limit: f64) {
-    for case in family("plates") {
-        let arrangement = plates(&case);
-        if !thin(&arrangement) {
-            continue;
-        }
-        for connection in [Connection::Floating, Connection::Grounded] {
-            let solved = solve(arrangement, connection, accuracy).unwrap();
-            let (charges, forces) = plate_checks(&case, connection, &solved);
-            charges.iter().for_each(|check| check.assert_within(charge_limit));
-            forces.iter().for_each(|check| check.assert_within(force_limit));
-        }
+fn all_within(cases: &[SolvedPlates], charge_limit: f64, force_limit: f64) {
+    for (case, connection, solved) in cases {
+        let (charges, forces) = plate_checks(case, *connection, solved);
+        charges.iter().for_each(|check| check.assert_within(charge_limit));
+        forces.iter().for_each(|check| check.assert_within(force_limit));
     }
 }
 
 #[test]
 fn thin_plates_at_the_default_accuracy() {
-    all_within(1e-4, 1e-4, 2e-4);
+    all_within(plates_at_default(), 1e-4, 2e-4);
 }
 
 #[test]
 fn thin_plates_at_a_high_accuracy() {
-    all_within(1e-5, 3e-5, 6e-5);
+    all_within(&plates_at(1e-5), 3e-5, 6e-5);
 }

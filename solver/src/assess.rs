@@ -12,7 +12,7 @@ use crate::family::{Family, Quantities};
 use crate::wedge::wedge_factors;
 use crate::Error;
 
-/// Permittivity of vacuum in F/m, CODATA 2022 [Codata22].
+/// Permittivity of vacuum in F/m, CODATA 2022 \[CODATA2022\].
 pub const EPS0: f64 = 8.854_187_818_8e-12;
 
 /// How the plates are wired.
@@ -216,6 +216,16 @@ impl Question {
             }
         }
         let arrangement = &self.arrangement;
+        for (plate, thickness_m) in
+            [("lower", arrangement.lower.thickness_m), ("upper", arrangement.upper.thickness_m)]
+        {
+            if thickness_m > 0.0 {
+                return wrong(format!(
+                    "the {plate} plate is {thickness_m:e} m thick; this version solves thin plates only, and a thick one \
+                     pulls up to twice the fringe of a thin one: give thickness 0 to solve it as a sheet"
+                ));
+            }
+        }
         let in_the_plane = arrangement.dimensions == Dimensions::Two;
         if in_the_plane
             && self.connection == Connection::Grounded

@@ -14,7 +14,7 @@ use crate::level::{Level, LevelParams};
 use crate::Error;
 
 /// Levels of the family: each is 4/3 or 3/2 of the one before.
-const LADDER: [u32; 8] = [2, 3, 4, 6, 8, 12, 16, 24];
+const LADDER: [u32; 9] = [2, 3, 4, 6, 8, 12, 16, 24, 32];
 /// Cells that the coarsest level of a triple needs along the plate between the narrow edge and the place where the
 /// gap has doubled. Set on tilted strips down to an edge gap of 5 % of the centre gap.
 const CELLS_AT_NARROW_EDGE: f64 = 5.5;
@@ -30,13 +30,19 @@ const FLOOR: f64 = 1e-6;
 /// uncertainty that a torque carries (times the size): they are made from the same field, and a small number that
 /// happens to agree between levels is not a known one.
 const SHARED: f64 = 0.25;
-/// Lever, in units of the size, at which the force counts when a torque is judged that may be zero.
+/// Lever, in units of the size, at which the force counts for the rounding of a torque that may be zero.
 const LEVER: f64 = 0.05;
+/// The same when a torque is held against the accuracy asked for: a torque about the centre that is smaller than the
+/// force at a fifth of the size is judged by that. In the plane, where levels are cheap, at a twentieth.
+const JUDGED_LEVER: f64 = 0.2;
+const JUDGED_LEVER_IN_THE_PLANE: f64 = 0.05;
 /// First level of a cross-section, where finer ones cost next to nothing.
 const FIRST_IN_THE_PLANE: f64 = 4.0;
 /// Solver tolerance: this part of the accuracy asked for, within these bounds.
 const TOLERANCE_PART: f64 = 1e-2;
 const TOLERANCE_RANGE: [f64; 2] = [1e-9, 1e-7];
+/// By what the uncertainty falls at best when one more level is solved: an error of fourth order, and some luck.
+const BEST_STEP: f64 = 0.15;
 /// Memory for a node of the finest level, in bytes: matrix, fields and preconditioner together, measured.
 const BYTES_PER_NODE: u64 = 600;
 
@@ -135,12 +141,12 @@ impl FamilyLimit {
     }
 
     /// Relative uncertainties that are held against the accuracy asked for: of the force and of the torque, about the
-    /// hinge where there is one, else about the centre.
-    fn reached(&self) -> [f64; 2] {
+    /// hinge where there is one, else about the centre; a torque counts at least as the force at `lever`.
+    fn reached(&self, lever: f64) -> [f64; 2] {
         let force = largest(&self.force);
         let torque = self.hinge.unwrap_or(self.centre);
-        let relative = |e: Estimate, scale: f64| e.uncertainty / e.value.abs().max(LEVER * scale);
-        [relative(self.force[2], force), relative(torque[1], largest(&torque).max(force))]
+        let relative = |e: Estimate, least: f64| e.uncertainty / e.value.abs().max(least);
+        [relative(self.force[2], LEVER * force), relative(torque[1], lever * force)]
     }
 }
 
@@ -160,17 +166,28 @@ impl Family {
         let mut level_params = LevelParams::default();
         level_params.outer.tolerance =
             (TOLERANCE_PART * params.accuracy).clamp(TOLERANCE_RANGE[0], TOLERANCE_RANGE[1]);
+        let in_the_plane = arrangement.dimensions == Dimensions::Two;
+        let lever = if in_the_plane { JUDGED_LEVER_IN_THE_PLANE } else { JUDGED_LEVER };
         let mut levels: Vec<LevelReport> = Vec::new();
         let mut rows: Vec<(f64, Vec<f64>)> = Vec::new();
         let mut before: Option<Vec<Limit>> = None;
         let mut coarse: Option<Level> = None;
         let mut best: Option<(FamilyLimit, Option<f64>)> = None;
+        let mut affordable: Vec<(u32, usize)> = Vec::new();
         for &q in &LADDER[first_level(arrangement, options)..] {
             let nodes = Grid::new(arrangement, q as usize, options)?.nodes();
-            // An accuracy below the floor is out of reach on any grid: no use in climbing on.
-            let hopeless = params.accuracy <= FLOOR && best.is_some();
-            if nodes as u64 * BYTES_PER_NODE > params.memory_bytes || hopeless {
-                break;
+            if nodes as u64 * BYTES_PER_NODE <= params.memory_bytes {
+                affordable.push((q, nodes));
+            }
+        }
+        for (n, &(q, nodes)) in affordable.iter().enumerate() {
+            if let Some((limit, _)) = &best {
+                // Even if every level that is left did its best, would it do?
+                let [force, torque] = limit.reached(lever);
+                let hoped = force.max(torque) * BEST_STEP.powi((affordable.len() - n) as i32);
+                if hoped.max(FLOOR) > params.accuracy {
+                    break;
+                }
             }
             progress(Progress::Level { q, nodes });
             let begun = Instant::now();
@@ -204,14 +221,14 @@ impl Family {
                 .collect();
             let limit = FamilyLimit::new(&limits, measured.hinge.is_some());
             let observed_order = limits[6].order;
-            if limit.reached().into_iter().all(|r| r <= params.accuracy) {
+            if limit.reached(lever).into_iter().all(|r| r <= params.accuracy) {
                 return Ok(Family { limit, levels, observed_order });
             }
             best = Some((limit, observed_order));
             before = Some(limits);
         }
         let last = levels.last();
-        let [force, torque] = best.map_or([f64::INFINITY; 2], |b| b.0.reached());
+        let [force, torque] = best.map_or([f64::INFINITY; 2], |b| b.0.reached(lever));
         let (level, nodes) = last.map_or((0, 0), |l| (l.q, l.nodes));
         Err(Error::AccuracyNotReached {
             asked: params.accuracy,

@@ -1,4 +1,4 @@
-//! Holding the plates: the inner problem of the capacitance-matrix method [Buzbee71].
+//! Holding the plates: the inner problem of the capacitance-matrix method [Buzbee1971].
 //!
 //! S lambda = g on the plate nodes, where S = R A0^-1 R^T is the response of the plates to charges on themselves in the
 //! untilted bench. S is never formed: modes are at hand, and in modes it is a small matrix (planes x planes) for each

@@ -139,7 +139,8 @@ impl Level {
             r.par_iter_mut().for_each(|r| *r = [-r[0], -r[1]]);
         };
         residual_of(&phi, &mut r);
-        let mut separable = Separable::new(&grid, &fixed, params.inner_tolerance);
+        let inner_tolerance = params.inner_tolerance * (FINE_LEVEL / q as f64).powi(2).min(1.0);
+        let mut separable = Separable::new(&grid, &fixed, inner_tolerance);
         let prepared = begun.elapsed().as_secs_f64();
         let info =
             conjugate_gradient(&free, &mut separable, &mut phi, &mut r, scale, &params.outer, progress)?;
@@ -222,6 +223,11 @@ impl Level {
         [lower, 1.0 + lower]
     }
 }
+
+/// Above this level the inner tolerance is tightened with the square of the level: what the plates are not held by
+/// counts in proportion to the stiffness of the cells next to them (measured: at level 24 the outer iterations rise from
+/// 19 to 47 without it).
+const FINE_LEVEL: f64 = 8.0;
 
 /// Below this part of a plate's own capacitance, what the pair shares with the outside is rounding.
 const NO_OUTSIDE: f64 = 1e-11;

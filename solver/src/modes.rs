@@ -1,4 +1,4 @@
-//! Eigenmodes of one axis: the transforms of the fast diagonalisation [Lynch64].
+//! Eigenmodes of one axis: the transforms of the fast diagonalisation [Lynch1964].
 //!
 //! For the second-difference operator D and the lumped masses M of an axis, the modes Q satisfy D Q = M Q Lambda and
 //! Q^T M Q = 1. Where the axis is its own mirror image the modes are even or odd, and a transform costs half.

@@ -1,8 +1,8 @@
 //! The preconditioner: the untilted bench solved exactly.
 //!
 //! On the untilted grid the operator is separable, A0 = Dx.My.Mz + Mx.Dy.Mz + Mx.My.Dz. Modes along x and y leave
-//! one tridiagonal system along z for each pair of modes (fast diagonalisation [Lynch64]). The plates, where the
-//! potential is given, are held by charges on their nodes (capacitance-matrix method [Buzbee71]): with R picking the
+//! one tridiagonal system along z for each pair of modes (fast diagonalisation [Lynch1964]). The plates, where the
+//! potential is given, are held by charges on their nodes (capacitance-matrix method [Buzbee1971]): with R picking the
 //! plate nodes, u = A0^-1 (r - R^T lambda), and lambda such that R u = 0. One forward and one backward transform
 //! serve both solves with A0.
 

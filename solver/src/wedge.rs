@@ -3,7 +3,7 @@
 //! The wedge factors come from lamellae: over each spot of the overlap the field is that of a small parallel capacitor
 //! of the local gap h = d + sx x + sy y, so that charge, force and torque are the integrals of 1/h, 1/h^2 and
 //! (arm + x)/h^2. Along x they are closed forms in e = half the difference of the end gaps over their sum: 1/h gives
-//! artanh(e)/e, 1/h^2 gives 1/(1 - e^2) (an arc of field lines between planes hinged together [Wedge]). Across y, where
+//! artanh(e)/e, 1/h^2 gives 1/(1 - e^2) (an arc of field lines between planes hinged together). Across y, where
 //! a roll makes e vary, Gauss-Legendre panels do the rest.
 
 use tiltgap_meshes::{Arrangement, Rectangle};
@@ -14,7 +14,7 @@ const SERIES_BELOW: f64 = 0.05;
 const SERIES_TERMS: i32 = 7;
 /// Panels across y; they shrink by half towards the narrow side, where the integrand is steepest.
 const PANELS: usize = 12;
-/// Nodes (positive half) and weights of the eight-point Gauss-Legendre rule on -1 to 1 [AbramowitzStegun, table 25.4].
+/// Nodes (positive half) and weights of the eight-point Gauss-Legendre rule on -1 to 1 [AbramowitzStegun1964, table 25.4].
 const GAUSS: [[f64; 2]; 4] = [
     [0.183_434_642_495_649_8, 0.362_683_783_378_362],
     [0.525_532_409_916_329, 0.313_706_645_877_887_3],
@@ -160,7 +160,7 @@ mod tests {
                 assert!((value - brute).abs() < 2e-6 * scale, "{tilt} {roll}: {value} {brute}");
             }
         }
-        // [Wedge] artanh(beta)/beta and 1/(1 - beta^2) with beta = (a/2) tan(tilt)/d.
+        // artanh(beta)/beta and 1/(1 - beta^2) with beta = (a/2) tan(tilt)/d.
         let a = bench(0.05, 0.0, [0.0; 2]);
         let beta = 0.05 * 0.05f64.tan() / 0.004;
         let w = wedge_factors(&a).unwrap();

@@ -1,7 +1,7 @@
 //! Force and torque: the exact derivative of the discrete energy.
 //!
 //! For a rigid virtual displacement v of a plate, spread over the grid by its [`Carry`], the force is the derivative
-//! of the energy at fixed nodal potentials (Coulomb's virtual work method [Coulomb83]; the field is stationary):
+//! of the energy at fixed nodal potentials (Coulomb's virtual work method [Coulomb1983]; the field is stationary):
 //! F_v = sum over corners of volume (1/2 |g|^2 div v - g . grad v . g) = -sum of volume T : grad v, with the Maxwell
 //! stress T = g g - |g|^2/2. With v = B (t + axis x lever), B the weights of the carry, all six components come out of one pass.
 
