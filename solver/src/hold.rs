@@ -3,7 +3,8 @@
 //! S lambda = g on the plate nodes, where S = R A0^-1 R^T is the response of the plates to charges on themselves in the
 //! untilted bench. S is never formed: modes are at hand, and in modes it is a small matrix (planes x planes) for each
 //! pair. Conjugate gradient, preconditioned with the inverse of those small matrices restricted to the plates, needs
-//! the same few iterations at every level.
+//! the same few iterations at every level. The right-hand sides run side by side, each on a thread of its own: the
+//! products are too small to be worth more.
 
 use ndarray::{Array2, ArrayView2};
 use rayon::prelude::*;
@@ -141,11 +142,11 @@ impl Hold {
 
     fn forward(&self, nodal: &OnSheets) -> OnSheets {
         let modes = self.stiffness[0].nrows();
-        (&self.sheets, nodal).into_par_iter().map(|(sheet, v)| sheet.forward(v.view(), modes)).collect()
+        self.sheets.iter().zip(nodal).map(|(sheet, v)| sheet.forward(v.view(), modes)).collect()
     }
 
     fn backward(&self, modal: &OnSheets) -> OnSheets {
-        (&self.sheets, modal).into_par_iter().map(|(sheet, v)| sheet.backward(v.view())).collect()
+        self.sheets.iter().zip(modal).map(|(sheet, v)| sheet.backward(v.view())).collect()
     }
 
     /// S v.

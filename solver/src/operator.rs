@@ -98,72 +98,73 @@ fn plane_energy(grid: &Grid, planes: [Option<&Plane<Vector3>>; 3], i: usize) -> 
     Some(energies)
 }
 
-/// Position of a neighbour in a 3 x 3 x 3 block: steps -1, 0, 1 along the axes become a number 0 to 26.
-fn slot(step: [isize; 3]) -> usize {
-    (9 * (step[0] + 1) + 3 * (step[1] + 1) + step[2] + 1) as usize
-}
+/// A row of the matrix lives on a block of 3 x 3 x 3 nodes. Their numbers in the block run from 0 to 26; this is the
+/// node itself, and these are the steps along the axes.
+const CENTRE: usize = 13;
+const STEPS: [usize; 3] = [9, 3, 1];
 
-/// The slots of an upright node: itself and its six neighbours.
+/// The numbers of an upright node: itself and its six neighbours.
 const UPRIGHT: [usize; 7] = [4, 10, 12, 13, 14, 16, 22];
 
-/// The row of node (i, j, k), from the energies of three planes: adds to its 27 possible entries, and says whether
-/// more than the seven of an upright node may differ from zero.
+/// The number one step from `from` along an axis, to the given side.
+#[inline(always)]
+fn beside(from: usize, axis: usize, side: usize) -> usize {
+    from + 2 * side * STEPS[axis] - STEPS[axis]
+}
+
+/// The row of the node with number `here` in its plane, from the energies of three planes: adds to its 27 possible
+/// entries, and says whether more than the seven of an upright node may differ from zero.
 fn row(
     planes: [Option<&Plane<NodeEnergy>>; 3],
-    at: [usize; 3],
-    shape: [usize; 3],
+    [j, k, here]: [usize; 3],
+    [ny, nz]: [usize; 2],
     entries: &mut [f64; 27],
 ) -> bool {
-    let [_, ny, nz] = shape;
-    let step = |axis: usize, side: usize| {
-        let mut s = [0isize; 3];
-        s[axis] = 2 * side as isize - 1;
-        s
-    };
-    let exists = |axis: usize, side: usize| if side == 0 { at[axis] > 0 } else { at[axis] + 1 < shape[axis] };
-    let nothing = NodeEnergy::default();
-    let energy = |s: [isize; 3]| {
-        let here = (at[1] as isize + s[1]) * nz as isize + at[2] as isize + s[2];
-        debug_assert!((at[1] as isize + s[1]) < ny as isize);
-        planes[(1 + s[0]) as usize].map_or(&nothing, |plane| &plane[here as usize])
-    };
-    let plus = |a: [isize; 3], b: [isize; 3]| [a[0] + b[0], a[1] + b[1], a[2] + b[2]];
-    let own = energy([0; 3]);
-    let centre = slot([0; 3]);
+    let [below, Some(middle), above] = planes else { return false };
+    let own = &middle[here];
+    // `[axis][side]`
+    let neighbours: [[Option<&NodeEnergy>; 2]; 3] = [
+        [below.map(|plane| &plane[here]), above.map(|plane| &plane[here])],
+        [(j > 0).then(|| &middle[here - nz]), (j + 1 < ny).then(|| &middle[here + nz])],
+        [(k > 0).then(|| &middle[here - 1]), (k + 1 < nz).then(|| &middle[here + 1])],
+    ];
     let mut coupled = own.coupled;
     for axis in 0..3 {
-        for side in (0..2).filter(|&side| exists(axis, side)) {
-            let to = step(axis, side);
-            let other = energy(to);
+        for side in 0..2 {
+            let Some(other) = neighbours[axis][side] else { continue };
+            let to = beside(CENTRE, axis, side);
             let weight = own.edge[axis][side] + other.edge[axis][1 - side];
-            entries[centre] += weight;
-            entries[slot(to)] -= weight;
-            coupled |= other.coupled;
+            entries[CENTRE] += weight;
+            entries[to] -= weight;
             if !other.coupled {
                 continue;
             }
+            coupled = true;
             // The corners at that neighbour in which this node is the end of an edge.
-            for (p, [l, m]) in PAIRS.into_iter().enumerate().filter(|(_, pair)| pair.contains(&axis)) {
+            for (p, [l, m]) in PAIRS.into_iter().enumerate() {
+                if axis != l && axis != m {
+                    continue;
+                }
                 let across = if axis == l { m } else { l };
                 for turn in 0..2 {
-                    let sides = if axis == l { [1 - side, turn] } else { [turn, 1 - side] };
-                    let coupling = other.pair[p][sides[0]][sides[1]];
+                    let coupling =
+                        if axis == l { other.pair[p][1 - side][turn] } else { other.pair[p][turn][1 - side] };
                     if coupling != 0.0 {
-                        entries[slot(to)] -= coupling;
-                        entries[slot(plus(to, step(across, turn)))] += coupling;
+                        entries[to] -= coupling;
+                        entries[beside(to, across, turn)] += coupling;
                     }
                 }
             }
         }
     }
-    for (p, [l, m]) in PAIRS.into_iter().enumerate().filter(|_| own.coupled) {
-        for sl in 0..2 {
-            for sm in 0..2 {
-                let coupling = own.pair[p][sl][sm];
-                if coupling != 0.0 {
-                    entries[centre] += 2.0 * coupling;
-                    entries[slot(step(l, sl))] -= coupling;
-                    entries[slot(step(m, sm))] -= coupling;
+    if own.coupled {
+        for (p, [l, m]) in PAIRS.into_iter().enumerate() {
+            for sl in 0..2 {
+                for sm in 0..2 {
+                    let coupling = own.pair[p][sl][sm];
+                    entries[CENTRE] += 2.0 * coupling;
+                    entries[beside(CENTRE, l, sl)] -= coupling;
+                    entries[beside(CENTRE, m, sm)] -= coupling;
                 }
             }
         }
@@ -188,6 +189,11 @@ fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Matrix> {
     let mut values = Vec::with_capacity(ENTRIES * nodes);
     let mut starts = Vec::with_capacity(nodes + 1);
     starts.push(0);
+    // By how much the node number of each of the 27 differs from that of the row.
+    let offsets: [isize; 27] = std::array::from_fn(|n| {
+        let step = |n: usize, stride: usize| (n as isize - 1) * stride as isize;
+        step(n / 9, ny * nz) + step(n / 3 % 3, nz) + step(n % 3, 1)
+    });
     for i in start - 1..=to as isize {
         energy.rotate_left(1);
         energy[2] = if (0..nx as isize).contains(&i) {
@@ -207,16 +213,12 @@ fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Matrix> {
             for k in 0..nz {
                 let node = grid.index(middle as usize, j, k);
                 let mut entries = [0.0; 27];
-                let coupled = row(planes, [middle as usize, j, k], shape, &mut entries);
-                entries[slot([0; 3])] += robin[node];
+                let coupled = row(planes, [j, k, j * nz + k], [ny, nz], &mut entries);
+                entries[CENTRE] += robin[node];
                 let mut keep = |n: usize| {
-                    let value = entries[n];
-                    if value != 0.0 {
-                        let step = |n: usize, stride: usize| (n as isize - 1) * stride as isize;
-                        let column =
-                            node as isize + step(n / 9, ny * nz) + step(n / 3 % 3, nz) + step(n % 3, 1);
-                        columns.push(column as u32);
-                        values.push(value);
+                    if entries[n] != 0.0 {
+                        columns.push((node as isize + offsets[n]) as u32);
+                        values.push(entries[n]);
                     }
                 };
                 if coupled {
