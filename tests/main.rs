@@ -2,10 +2,13 @@
 
 mod cases;
 mod cli;
+mod convergence;
 mod coverage;
 mod discrete;
 mod ideal_limit;
+mod operator;
 mod plates;
+mod random;
 mod strips;
 mod threads;
 mod wrench;

@@ -2,7 +2,7 @@
 //!
 //! Each column has its own step lengths; the matrix and the preconditioner are applied to all columns at once. The
 //! preconditioner may vary a little from one application to the next, as one does that contains an inner iteration
-//! [GolubYe1999]: the direction is then updated with z.(r_new - r_old), which costs nothing extra because the
+//! \[GolubYe1999\]: the direction is then updated with z.(r_new - r_old), which costs nothing extra because the
 //! difference is a multiple of A p.
 
 use rayon::prelude::*;
