@@ -9,6 +9,7 @@ mod ideal_limit;
 mod operator;
 mod plates;
 mod random;
+mod squares;
 mod strips;
 mod threads;
 mod wrench;
