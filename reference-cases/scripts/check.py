@@ -30,7 +30,7 @@ import store
 import strips_parallel
 import wedge_ideal
 
-KEY = re.compile(r"\[([A-Z][A-Za-z]*[0-9]{4})\]")
+KEY = re.compile(r"\\?\[([A-Z][A-Za-z]*[0-9]{4})\\?\]")
 failures = []
 
 

@@ -14,7 +14,7 @@ const SERIES_BELOW: f64 = 0.05;
 const SERIES_TERMS: i32 = 7;
 /// Panels across y; they shrink by half towards the narrow side, where the integrand is steepest.
 const PANELS: usize = 12;
-/// Nodes (positive half) and weights of the eight-point Gauss-Legendre rule on -1 to 1 [AbramowitzStegun1964, table 25.4].
+/// Nodes (positive half) and weights of the eight-point Gauss-Legendre rule on -1 to 1 [AbramowitzStegun1964], table 25.4.
 const GAUSS: [[f64; 2]; 4] = [
     [0.183_434_642_495_649_8, 0.362_683_783_378_362],
     [0.525_532_409_916_329, 0.313_706_645_877_887_3],
