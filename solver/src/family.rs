@@ -34,7 +34,7 @@ const FLOOR: f64 = 1e-6;
 /// Part of the largest component of a vector's uncertainty that every component carries at least, and of the force's
 /// uncertainty that a torque carries (times the size): they are made from the same field, and a small number that
 /// happens to agree between levels is not a known one.
-const SHARED: f64 = 0.25;
+const SHARED: f64 = 0.3;
 /// Lever, in units of the size, at which the force counts for the rounding of a torque that may be zero.
 const LEVER: f64 = 0.05;
 /// The same when a torque is held against the accuracy asked for: a torque about the centre that is smaller than the
@@ -118,14 +118,14 @@ fn first_level(arrangement: &Arrangement, options: &GridOptions, accuracy: f64) 
     LADDER.iter().position(|&q| q as f64 >= needed * (1.0 - f64::EPSILON)).unwrap_or(last).min(last)
 }
 
-/// A vector with the uncertainty of its components, each at least `least` and `floor`.
+/// A vector with the uncertainty of its components, each at least `least`, and the `floor` added.
 fn vector(limits: &[Limit], floor: f64, least: f64) -> Components {
     let least = limits.iter().map(|l| SHARED * l.uncertainty).fold(least, f64::max);
     [0, 1, 2].map(|d| {
         let Limit { value, uncertainty, .. } = limits[d];
         // A component that vanishes by symmetry is exactly zero on every level.
         let exact = value == 0.0 && uncertainty == 0.0;
-        let bound = if exact { 0.0 } else { uncertainty.max(least).max(floor) };
+        let bound = if exact { 0.0 } else { uncertainty.max(least) + floor };
         Estimate { value, uncertainty: bound }
     })
 }
@@ -141,14 +141,18 @@ impl FamilyLimit {
         let matrix = [1, 2, 3].map(|n| plain(&limits[n]));
         let of = |from: usize| limits[from..from + 3].iter().map(|l| l.value.abs()).fold(0.0, f64::max);
         let force = of(4);
-        let floor = if coarsest <= 2.0 { COARSE_FLOOR } else { FLOOR };
+        let coarse = if coarsest <= 2.0 { COARSE_FLOOR } else { 0.0 };
         let shared = limits[4..7].iter().map(|l| SHARED * l.uncertainty).fold(0.0, f64::max);
+        let torque = |from: usize| {
+            let scale = of(from).max(LEVER * force);
+            vector(&limits[from..from + 3], FLOOR * scale, shared.max(coarse * scale))
+        };
         FamilyLimit {
             charge: plain(&limits[0]),
             matrix,
-            force: vector(&limits[4..7], floor * force, 0.0),
-            centre: vector(&limits[7..10], floor * of(7).max(LEVER * force), shared),
-            hinge: with_hinge.then(|| vector(&limits[10..13], floor * of(10).max(LEVER * force), shared)),
+            force: vector(&limits[4..7], FLOOR * force, coarse * force),
+            centre: torque(7),
+            hinge: with_hinge.then(|| torque(10)),
         }
     }
 
