@@ -34,7 +34,7 @@ const FLOOR: f64 = 1e-6;
 /// Part of the largest component of a vector's uncertainty that every component carries at least, and of the force's
 /// uncertainty that a torque carries (times the size): they are made from the same field, and a small number that
 /// happens to agree between levels is not a known one.
-const SHARED: f64 = 0.3;
+const SHARED: f64 = 0.25;
 /// Lever, in units of the size, at which the force counts for the rounding of a torque that may be zero.
 const LEVER: f64 = 0.05;
 /// The same when a torque is held against the accuracy asked for: a torque about the centre that is smaller than the
