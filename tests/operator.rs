@@ -29,7 +29,7 @@ fn one_cell(shear: f64) -> Grid {
 }
 
 fn dense(grid: &Grid) -> Vec<Vec<f64>> {
-    let operator = Operator::assemble(grid, Dimensions::Three).unwrap();
+    let operator = Operator::assemble(grid).unwrap();
     let matrix = operator.matrix();
     let n = grid.nodes();
     (0..n).map(|i| (0..n).map(|j| matrix.get(i, j).copied().unwrap_or(0.0)).collect()).collect()
@@ -95,7 +95,7 @@ fn the_matrix_is_symmetric_sorted_and_annihilates_constants_up_to_the_far_bounda
     let (surroundings, dimensions) = (Surroundings::Open, Dimensions::Three);
     let arrangement = Arrangement { lower: plate, upper: plate, pose, surroundings, dimensions };
     let grid = Grid::new(&arrangement, 1, &GridOptions::suited(&arrangement)).unwrap();
-    let matrix = Operator::assemble(&grid, dimensions).unwrap().matrix();
+    let matrix = Operator::assemble(&grid).unwrap().matrix();
     let shape = grid.shape();
     let mut off_diagonal_pairs = 0;
     for (node, row) in matrix.outer_iterator().enumerate() {

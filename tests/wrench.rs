@@ -21,7 +21,7 @@ fn solved(arrangement: &Arrangement, sideways: Sideways) -> (Level, Operator) {
     let params =
         LevelParams { outer: cg::Params { tolerance: 1e-11, ..Default::default() }, inner_tolerance: 1e-9 };
     let level = Level::solve(arrangement, &options, 1, None, &params, &mut |_, _| {}).unwrap();
-    let operator = Operator::assemble(&level.grid, arrangement.dimensions).unwrap();
+    let operator = Operator::assemble(&level.grid).unwrap();
     (level, operator)
 }
 
@@ -126,13 +126,8 @@ fn energy_equals_the_charge_on_the_plates() {
     operator.multiply(&level.phi, &vec![false; n], &mut flux);
     for (plate, of) in [(level.grid.lower, 0), (level.grid.upper, 1)] {
         let mut charge = [0.0; 2];
-        for i in plate.i[0]..=plate.i[1] {
-            for j in plate.j[0]..=plate.j[1] {
-                for k in plate.k[0]..=plate.k[1] {
-                    let q = flux[level.grid.index(i, j, k)];
-                    charge = [charge[0] + q[0], charge[1] + q[1]];
-                }
-            }
+        for node in level.grid.plate_nodes(&plate) {
+            charge = [charge[0] + flux[node][0], charge[1] + flux[node][1]];
         }
         for column in 0..2 {
             let (from_energy, from_charge) = (level.matrix[of][column], charge[column]);

@@ -199,6 +199,14 @@ impl Grid {
         (i * self.axes[1].len() + j) * self.axes[2].len() + k
     }
 
+    /// Numbers of the nodes of a plate.
+    pub fn plate_nodes(&self, plate: &NodeBox) -> impl Iterator<Item = usize> + '_ {
+        let NodeBox { i, j, k } = *plate;
+        (i[0]..=i[1]).flat_map(move |i| {
+            (j[0]..=j[1]).flat_map(move |j| (k[0]..=k[1]).map(move |k| self.index(i, j, k)))
+        })
+    }
+
     /// Where a node stands in the room.
     #[inline]
     pub fn position(&self, i: usize, j: usize, k: usize) -> Vector3 {

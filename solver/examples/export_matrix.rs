@@ -30,7 +30,7 @@ fn main() -> Result<(), Box<dyn Error>> {
     let seconds = begun.elapsed().as_secs_f64();
 
     let grid = Grid::new(&arrangement, q, &options)?;
-    let operator = Operator::assemble(&grid, dimensions).ok_or("the grid is folded")?;
+    let operator = Operator::assemble(&grid).ok_or("the grid is folded")?;
     let matrix = operator.matrix();
     let [nx, ny, nz] = grid.shape();
     let mut number = vec![None; grid.nodes()];

@@ -3,7 +3,7 @@
 use std::time::Instant;
 
 use rayon::prelude::*;
-use tiltgap_meshes::{Arrangement, Grid, GridOptions, NodeBox};
+use tiltgap_meshes::{Arrangement, Grid, GridOptions};
 
 use crate::cg::{self, conjugate_gradient, Linear};
 use crate::field::{dots, Field};
@@ -81,16 +81,6 @@ impl Linear<2> for Free<'_> {
     }
 }
 
-fn for_each_node(plate: &NodeBox, grid: &Grid, mut act: impl FnMut(usize)) {
-    for i in plate.i[0]..=plate.i[1] {
-        for j in plate.j[0]..=plate.j[1] {
-            for k in plate.k[0]..=plate.k[1] {
-                act(grid.index(i, j, k));
-            }
-        }
-    }
-}
-
 /// sqrt(sum of r^2/diagonal) over sqrt(energy), the worst column.
 fn scaled_norm(r: &Field<2>, diagonal: &[f64], scale: [f64; 2]) -> f64 {
     let weighted: Field<2> = r.par_iter().zip(diagonal).map(|(r, d)| [r[0] / d, r[1] / d]).collect();
@@ -115,8 +105,7 @@ impl Level {
     ) -> Result<Level, Error> {
         let begun = Instant::now();
         let grid = Grid::new(arrangement, q, options)?;
-        let operator = Operator::assemble(&grid, arrangement.dimensions)
-            .ok_or_else(|| arrangement.folded(options.sideways))?;
+        let operator = Operator::assemble(&grid).ok_or_else(|| arrangement.folded(options.sideways))?;
         let assembly = begun.elapsed().as_secs_f64();
         let n = grid.nodes();
         let mut fixed = vec![false; n];
@@ -125,10 +114,10 @@ impl Level {
             None => between_the_plates(&grid),
         };
         for (plate, potential) in [(&grid.lower, [1.0, 0.0]), (&grid.upper, [0.0, 1.0])] {
-            for_each_node(plate, &grid, |node| {
+            for node in grid.plate_nodes(plate) {
                 fixed[node] = true;
                 phi[node] = potential;
-            });
+            }
         }
         let free = Free { operator: &operator, fixed: &fixed };
         let nothing = vec![false; n];

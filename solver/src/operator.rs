@@ -9,7 +9,7 @@
 
 use rayon::prelude::*;
 use sprs::CsMatI;
-use tiltgap_meshes::{dot, Dimensions, End, Grid, Vector3};
+use tiltgap_meshes::{dot, End, Grid, Vector3};
 
 use crate::corner::{cross, differences, for_each_octant, minus, positions, Plane, Star};
 use crate::field::{in_order, Field};
@@ -234,7 +234,7 @@ fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Matrix> {
 }
 
 /// Robin weights of the nodes on the far boundary: n.r/|r|^2 over each face of a boundary cell, shared by its nodes.
-fn robin(grid: &Grid, dimensions: Dimensions) -> Vec<f64> {
+fn robin(grid: &Grid) -> Vec<f64> {
     let shape = grid.shape();
     let mut weights = vec![0.0; grid.nodes()];
     for axis in 0..3 {
@@ -254,7 +254,7 @@ fn robin(grid: &Grid, dimensions: Dimensions) -> Vec<f64> {
                     let x = nodes.map(|[i, j, k]| grid.position(i, j, k));
                     let normal = cross(minus(x[2], x[0]), minus(x[1], x[0]));
                     let mut middle = [0, 1, 2].map(|d| x.iter().map(|p| p[d]).sum::<f64>() / 4.0);
-                    if dimensions == Dimensions::Two {
+                    if grid.is_cross_section() {
                         middle[1] = 0.0; // the distance counts in the plane of the cross-section
                     }
                     let weight = dot(normal, middle).abs() / dot(middle, middle) / 4.0;
@@ -271,9 +271,9 @@ fn robin(grid: &Grid, dimensions: Dimensions) -> Vec<f64> {
 impl Operator {
     /// Assembles the operator of a grid, in parallel over planes of constant x; none if the grid is folded, that is
     /// if a corner of a cell has no positive volume.
-    pub fn assemble(grid: &Grid, dimensions: Dimensions) -> Option<Operator> {
+    pub fn assemble(grid: &Grid) -> Option<Operator> {
         let [nx, _, _] = grid.shape();
-        let robin = robin(grid, dimensions);
+        let robin = robin(grid);
         let planes = nx.div_ceil(BLOCKS);
         let blocks: Option<Vec<Matrix>> = (0..nx.div_ceil(planes))
             .into_par_iter()
@@ -285,11 +285,6 @@ impl Operator {
     /// Number of rows.
     pub fn rows(&self) -> usize {
         self.blocks.iter().map(|b| b.rows()).sum()
-    }
-
-    /// Number of stored entries.
-    pub fn entries(&self) -> usize {
-        self.blocks.iter().map(|b| b.nnz()).sum()
     }
 
     /// The whole matrix in one piece.
