@@ -1,167 +1,184 @@
 //! Holding the plates: the inner problem of the capacitance-matrix method [Buzbee1971].
 //!
-//! S lambda = g on the plate nodes, where S = R A0^-1 R^T is the response of the plates to charges on themselves in the
-//! untilted bench. S is never formed: modes are at hand, and in modes it is a small matrix (planes x planes) for each
-//! pair. Conjugate gradient, preconditioned with the inverse of those small matrices restricted to the plates, needs
-//! the same few iterations at every level. The right-hand sides run side by side, each on a thread of its own: the
-//! products are too small to be worth more.
+//! S lambda = g on the surface nodes of the plates, where S = R A0^-1 R^T is the response of the surface to charges on
+//! itself in the untilted bench. Inside the metal nothing has to be held: with its surface at zero it is at zero. S is
+//! never formed: modes are at hand, and in modes it is one tridiagonal system of the planes for each pair
+//! ([`Stack`]). Conjugate gradient; the preconditioner adds what the space outside would hold if the faces were planes
+//! without end, restricted to the plates, and what the metal holds between its faces and rims ([`Metal`]). It needs
+//! nearly the same few iterations at every level. The right-hand sides run side by side, each on a thread of its own:
+//! the products are too small to be worth more.
 
-use ndarray::{Array2, ArrayView2};
+use ndarray::Array2;
 use rayon::prelude::*;
-use tiltgap_meshes::NodeBox;
+use tiltgap_meshes::{Axis, Body};
 
-use crate::modes::{multiply, Modes, Transform};
+use crate::metal::Metal;
+use crate::modes::Modes;
+use crate::shell::{Part, Shell};
+use crate::stack::{Ladder, Stack};
 use crate::Error;
 
 /// Most inner iterations; more than ten times what the worst case takes.
 const MOST_ITERATIONS: usize = 400;
 
-/// The plate planes and their response in modes.
-pub struct PlaneModes {
-    /// Nodes along z of the plate planes, ascending: lower plate, then upper plate.
-    pub planes: Vec<usize>,
-    /// G, row by row: response of plane p to a charge on plane q, `[p * planes + q]`, modes along x by modes along y.
-    pub response: Vec<Array2<f64>>,
-}
-
-/// One plane of a plate.
-struct Sheet {
-    /// Modes along x on the nodes of the plate.
-    x: Transform,
-    /// Modes along y on the nodes of the plate, node down.
-    y: Array2<f64>,
-    /// Area that belongs to each node.
+/// One plate, with its guard ring if it has one: the planes of its surface and the boxes of its metal.
+struct Plate {
+    shell: Shell,
+    metals: Vec<Metal>,
+    /// Area that belongs to each node of a face.
     area: Array2<f64>,
+    /// Its first plane among those of both plates.
+    first: usize,
 }
 
 /// The plates' own operator, ready to be inverted.
 pub struct Hold {
-    modes: PlaneModes,
-    /// G^-1, in the same order as G.
-    stiffness: Vec<Array2<f64>>,
-    sheets: Vec<Sheet>,
+    /// Nodes along z of the planes, ascending: lower plate, then upper plate.
+    planes: Vec<usize>,
+    /// The planes that are faces.
+    faces: Vec<usize>,
+    stack: Stack,
+    plates: Vec<Plate>,
     tolerance: f64,
 }
 
-impl Sheet {
-    /// Modal coefficients of nodal values on the sheet; `modes` is the number of modes along x.
-    fn forward(&self, nodal: ArrayView2<f64>, modes: usize) -> Array2<f64> {
-        let mut along_y = Array2::zeros((nodal.nrows(), self.y.ncols()));
-        multiply(nodal, self.y.view(), along_y.view_mut());
-        let mut modal = Array2::zeros((modes, self.y.ncols()));
-        self.x.forward(along_y.view(), modal.view_mut());
-        modal
-    }
-
-    /// Nodal values on the sheet of modal coefficients.
-    fn backward(&self, modal: ArrayView2<f64>) -> Array2<f64> {
-        let mut along_y = Array2::zeros((self.area.nrows(), self.y.ncols()));
-        self.x.backward(modal, along_y.view_mut());
-        let mut nodal = Array2::zeros(self.area.dim());
-        multiply(along_y.view(), self.y.t(), nodal.view_mut());
-        nodal
-    }
-}
-
-/// Inverts the matrices (planes x planes) of all pairs of modes; they are symmetric and positive.
-fn inverse(response: &[Array2<f64>], planes: usize) -> Vec<Array2<f64>> {
-    let mut inverse = response.to_vec();
-    let (nx, ny) = response[0].dim();
-    for a in 0..nx {
-        for b in 0..ny {
-            let g = nalgebra::DMatrix::from_fn(planes, planes, |p, q| response[p * planes + q][[a, b]]);
-            // A response that is singular up to rounding is replaced by its diagonal: the inverse only preconditions.
-            let inv = g.clone().cholesky().map(|c| c.inverse()).unwrap_or_else(|| {
-                nalgebra::DMatrix::from_fn(planes, planes, |p, q| if p == q { 1.0 / g[(p, p)] } else { 0.0 })
+/// The surface of a body as a [`Shell`].
+fn surface(body: &Body, [x, y]: [&Modes; 2], [nx, ny]: [usize; 2]) -> Shell {
+    let hull = &body.hull;
+    let ([i0, i1], [j0, j1], [k0, k1]) = (hull.i, hull.j, hull.k);
+    // A side of a box at the end of an axis lies in a symmetry plane or an insulating wall: the metal goes on there.
+    let walls = |range: [usize; 2], nodes: usize| {
+        let ends = [(range[0], range[0] > 0), (range[1], range[1] + 1 < nodes)];
+        ends.into_iter().filter(|e| e.1).map(|e| e.0).collect::<Vec<_>>()
+    };
+    let mask = |part: Part| {
+        Array2::from_shape_fn((i1 - i0 + 1, j1 - j0 + 1), |(i, j)| {
+            let held = body.boxes.iter().any(|b| {
+                let inside = b.contains(i0 + i, j0 + j, k0);
+                let rim = walls(b.i, nx).contains(&(i0 + i)) || walls(b.j, ny).contains(&(j0 + j));
+                inside && (part == Part::Face || rim)
             });
-            for p in 0..planes {
-                for q in 0..planes {
-                    inverse[p * planes + q][[a, b]] = inv[(p, q)];
-                }
-            }
-        }
-    }
-    inverse
+            f64::from(u8::from(held))
+        })
+    };
+    let lines = |of: &dyn Fn(&tiltgap_meshes::NodeBox) -> Vec<usize>, first: usize| {
+        let mut lines: Vec<usize> = body.boxes.iter().flat_map(of).map(|n| n - first).collect();
+        lines.sort_unstable();
+        lines.dedup();
+        lines
+    };
+    let (rows, columns) = (lines(&|b| walls(b.i, nx), i0), lines(&|b| walls(b.j, ny), j0));
+    let part = |k| if k == k0 || k == k1 { Part::Face } else { Part::Rim };
+    Shell::new(
+        x.on(i0, i1),
+        y.on(j0, j1).vectors(),
+        (k0..=k1).map(part).collect(),
+        [mask(Part::Face), mask(Part::Rim)],
+        rows,
+        columns,
+    )
 }
 
-/// One right-hand side on all sheets.
-type OnSheets = Vec<Array2<f64>>;
+/// One right-hand side on all planes.
+type OnPlanes = Vec<Array2<f64>>;
 
-fn inner(a: &OnSheets, b: &OnSheets) -> f64 {
+fn inner(a: &OnPlanes, b: &OnPlanes) -> f64 {
     a.iter().zip(b).map(|(a, b)| a.iter().zip(b).map(|(a, b)| a * b).sum::<f64>()).sum()
 }
 
 impl Hold {
-    /// From the modal response of the plate planes, the plates, the modes and the node masses along x and y.
+    /// From the bodies, the axes of the untilted bench with their modes, and what `stack` ties.
     pub fn new(
-        modes: PlaneModes,
-        plates: &[NodeBox; 2],
-        [x, y]: [&Modes; 2],
-        masses: [Vec<f64>; 2],
+        bodies: [&Body; 2],
+        axes: [&Axis; 2],
+        modes: [&Modes; 2],
+        ladder: &Ladder,
+        stack: Stack,
         tolerance: f64,
     ) -> Hold {
-        let sheets = plates
+        let masses = axes.map(|axis| axis.masses());
+        let mut first = 0;
+        let plates: Vec<Plate> = bodies
             .iter()
-            .flat_map(|plate| {
-                let [i, j] = [plate.i, plate.j];
-                let sheet = || Sheet {
-                    x: x.on(i[0], i[1]),
-                    y: y.on(j[0], j[1]).vectors(),
-                    area: Array2::from_shape_fn((i[1] - i[0] + 1, j[1] - j[0] + 1), |(m, n)| {
-                        masses[0][i[0] + m] * masses[1][j[0] + n]
-                    }),
-                };
-                (plate.k[0]..=plate.k[1]).map(|_| sheet()).collect::<Vec<_>>()
+            .map(|body| {
+                let shell = surface(body, modes, axes.map(|axis| axis.len()));
+                let corner = [body.hull.i[0], body.hull.j[0]];
+                let thick = body.hull.k[1] > body.hull.k[0];
+                let metals = body
+                    .boxes
+                    .iter()
+                    .filter(|_| thick)
+                    .map(|b| Metal::new(axes, ladder, b, corner))
+                    .collect();
+                let area = Array2::from_shape_fn(shell.mask(0).dim(), |(i, j)| {
+                    masses[0][corner[0] + i] * masses[1][corner[1] + j]
+                });
+                let plate = Plate { shell, metals, area, first };
+                first += plate.shell.planes();
+                plate
             })
             .collect();
-        let stiffness = inverse(&modes.response, modes.planes.len());
-        Hold { modes, stiffness, sheets, tolerance }
+        let planes = bodies.iter().flat_map(|b| b.hull.k[0]..=b.hull.k[1]).collect();
+        Hold { planes, faces: stack.faces(), stack, plates, tolerance }
     }
 
-    /// Nodes along z of the plate planes.
+    /// Nodes along z of the planes of the plates.
     pub fn planes(&self) -> &[usize] {
-        &self.modes.planes
+        &self.planes
     }
 
-    /// Sum over q of `matrix[p][q]` times the modal coefficients of sheet q.
-    fn couple(matrix: &[Array2<f64>], modal: &OnSheets) -> OnSheets {
-        let planes = modal.len();
-        (0..planes)
-            .map(|p| {
-                let mut sum = &matrix[p * planes] * &modal[0];
-                for q in 1..planes {
-                    ndarray::Zip::from(&mut sum)
-                        .and(&matrix[p * planes + q])
-                        .and(&modal[q])
-                        .for_each(|s, m, v| *s += m * v);
-                }
-                sum
-            })
-            .collect()
+    /// The plate that a plane belongs to, and the number of the plane in it.
+    fn place(&self, plane: usize) -> (&Plate, usize) {
+        let plate =
+            self.plates.iter().rev().find(|p| p.first <= plane).expect("planes begin at the first plate");
+        (plate, plane - plate.first)
     }
 
-    fn forward(&self, nodal: &OnSheets) -> OnSheets {
-        let modes = self.stiffness[0].nrows();
-        self.sheets.iter().zip(nodal).map(|(sheet, v)| sheet.forward(v.view(), modes)).collect()
+    fn forward(&self, nodal: &OnPlanes) -> OnPlanes {
+        let one = |(p, v): (usize, &Array2<f64>)| {
+            let (plate, own) = self.place(p);
+            plate.shell.forward(own, v.view())
+        };
+        nodal.iter().enumerate().map(one).collect()
     }
 
-    fn backward(&self, modal: &OnSheets) -> OnSheets {
-        self.sheets.iter().zip(modal).map(|(sheet, v)| sheet.backward(v.view())).collect()
+    fn backward(&self, modal: &OnPlanes) -> OnPlanes {
+        let one = |(p, v): (usize, &Array2<f64>)| {
+            let (plate, own) = self.place(p);
+            plate.shell.backward(own, v.view())
+        };
+        modal.iter().enumerate().map(one).collect()
     }
 
     /// S v.
-    fn respond(&self, v: &OnSheets) -> OnSheets {
-        self.backward(&Self::couple(&self.modes.response, &self.forward(v)))
+    fn respond(&self, v: &OnPlanes) -> OnPlanes {
+        let mut modal = self.forward(v);
+        self.stack.respond(&mut modal);
+        self.backward(&modal)
     }
 
-    fn times_area(&self, v: &OnSheets) -> OnSheets {
-        self.sheets.iter().zip(v).map(|(sheet, v)| v * &sheet.area).collect()
-    }
-
-    /// An approximation of S^-1 v: the modal inverse, restricted to the plates.
-    fn precondition(&self, v: &OnSheets) -> OnSheets {
-        let modal = self.forward(&self.times_area(v));
-        self.times_area(&self.backward(&Self::couple(&self.stiffness, &modal)))
+    /// An approximation of S^-1 v.
+    fn precondition(&self, v: &OnPlanes) -> OnPlanes {
+        let mut charge: OnPlanes = v.iter().map(|v| Array2::zeros(v.dim())).collect();
+        let of_faces: OnPlanes = self
+            .faces
+            .iter()
+            .map(|&p| {
+                let (plate, own) = self.place(p);
+                plate.shell.forward(own, (&v[p] * &plate.area).view())
+            })
+            .collect();
+        for (&p, modal) in self.faces.iter().zip(self.stack.outside(&of_faces)) {
+            let (plate, own) = self.place(p);
+            charge[p] = plate.shell.backward(own, modal.view()) * &plate.area;
+        }
+        for plate in &self.plates {
+            let planes = plate.first..plate.first + plate.shell.planes();
+            for metal in &plate.metals {
+                metal.add_charges(&v[planes.clone()], &mut charge[planes.clone()]);
+            }
+        }
+        charge
     }
 
     /// Charges on the plates that bring the potential there to zero. `kept` holds, for each mode along x, the modal
@@ -171,13 +188,13 @@ impl Hold {
     /// # Errors
     /// [`Error::NotConverged`]
     pub fn charges<const K: usize>(&self, kept: &[Vec<f64>]) -> Result<(Vec<Array2<f64>>, usize), Error> {
-        let planes = self.sheets.len();
-        let ny = self.sheets[0].y.ncols();
-        let solved: Vec<Result<(OnSheets, usize), Error>> = (0..K)
+        let planes = self.planes.len();
+        let dim = self.plates[0].shell.modes();
+        let solved: Vec<Result<(OnPlanes, usize), Error>> = (0..K)
             .into_par_iter()
             .map(|r| {
-                let potential: OnSheets = (0..planes)
-                    .map(|p| Array2::from_shape_fn((kept.len(), ny), |(a, b)| kept[a][(p * K + r) * ny + b]))
+                let potential: OnPlanes = (0..planes)
+                    .map(|p| Array2::from_shape_fn(dim, |(a, b)| kept[a][(p * K + r) * dim.1 + b]))
                     .collect();
                 let (charge, iterations) = self.solve(self.backward(&potential))?;
                 Ok((self.forward(&charge), iterations))
@@ -196,8 +213,8 @@ impl Hold {
     }
 
     /// S^-1 b by conjugate gradient.
-    fn solve(&self, b: OnSheets) -> Result<(OnSheets, usize), Error> {
-        let mut x: OnSheets = b.iter().map(|v| Array2::zeros(v.dim())).collect();
+    fn solve(&self, b: OnPlanes) -> Result<(OnPlanes, usize), Error> {
+        let mut x: OnPlanes = b.iter().map(|v| Array2::zeros(v.dim())).collect();
         let mut r = b;
         let mut z = self.precondition(&r);
         let mut p = z.clone();
