@@ -7,7 +7,7 @@
   scripts and the Rust sources in bibliography.md, every entry there used
 * strips-parallel, discs, pull-in, wedge-ideal, disc-wedge, cross-capacitance, guard-gaps and closed-domains in full, with
   a second route to the wedge formulas, of strips and of discs, and to the rectangle
-* coaxial discs of equal and unequal size and two tilted pairs of discs-tilted, from Love's equations and again
+* discs: coaxial thin pairs of equal and unequal size from Love's equations, two tilted pairs and a thick pair again
 * figures that two files have in common: squares with plates, the 180 degree wedge with coplanar strips, hinged strips with
   tip rise 0 with parallel strips, parallel strips with strips.json
 
@@ -26,6 +26,7 @@ import closed_domains
 import cross_capacitance
 import disc_wedge
 import discs
+import discs_thick
 import discs_tilted
 import guard_gaps
 import pull_in
@@ -151,6 +152,10 @@ def check_discs(docs):
             new = discs_tilted.compute(case, SimpleNamespace(order=None, check=False))
             far = max(far, *(store.worst(v, case["value"][k], case["uncertainty"][k]) for k, v in new.items()))
     verdict(far <= 1, f"discs-tilted: two tilted pairs recomputed, worst difference {far:.2g} of the uncertainty")
+    case = docs["discs-thick"]["cases"][0]
+    new = discs_thick.values(case["geometry"], 18)
+    far = max(store.worst(v, case["value"][k], case["uncertainty"][k]) for k, v in new.items())
+    verdict(far <= 1, f"discs-thick: {case['name']} with fewer panels, difference {far:.2g} of the uncertainty")
 
 
 def check_between_files(docs):

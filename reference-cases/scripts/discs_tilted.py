@@ -244,7 +244,8 @@ def check(g, order, value):
     """prints how far other routes are from `value`, relative to the largest charge or the largest force"""
     far = lambda new, old, scale: float(np.max(np.abs(np.subtract(new, old))) / np.max(np.abs(scale)))
     pair = solve(g, order)
-    print("  potential on the discs     " + "  ".join(f"{name} {potential_error(pair, v):.1e}" for name, v in pair.wirings()))
+    errors = "  ".join(f"{name} {potential_error(pair, volts):.1e}" for name, volts in pair.wirings())
+    print("  potential on the discs     " + errors)
     for name, volts in pair.wirings():
         force, torque = value["force_" + name], value["torque_" + name]
         reaction, quotient = pair.wrench(volts, on_lower=True), quotients(g, order, volts)

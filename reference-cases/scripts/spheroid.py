@@ -5,11 +5,12 @@ and eta = sqrt(1 - rho^2/a^2). For l - m even
 
     U = T_lm(xi) P_lm(eta) cos(m phi) or sin(m phi),     T_lm(xi) = Q_l^m(i xi) / Q_l^m(i 0)
 
-is harmonic off the disc, falls off at infinity and is P_lm cos(m phi) on the disc. Its charge density (both faces together) is
-(2 lambda_lm / (a eta)) times the same function, lambda_lm = -T_lm'(0): the functions P_lm(eta)/eta are eigenfunctions of
-the potential of a layer on the disc [Copson1947], [AbramowitzStegun1964] (chapters 8 and 21). The recurrences
+is harmonic off the disc, falls off at infinity and is P_lm cos(m phi) on the disc. Its charge density (both faces
+together) is (2 lambda_lm / (a eta)) times the same function, lambda_lm = -T_lm'(0): the functions P_lm(eta)/eta are
+eigenfunctions of the potential of a layer on the disc [Copson1947], [AbramowitzStegun1964] (chapters 8 and 21). With
+Q_l^m(i xi) = (-i)^l q_l the recurrences
 
-    Q_l^m(i xi) = (-i)^l q_l,   (l-m+1) q_(l+1) = (l+m) q_(l-1) - (2l+1) xi q_l,   (1+xi^2) q_l' = -(l+1) xi q_l - (l-m+1) q_(l+1)
+    (l-m+1) q_(l+1) = (l+m) q_(l-1) - (2l+1) xi q_l,     (1+xi^2) q_l' = -(l+1) xi q_l - (l-m+1) q_(l+1)
 
 run backwards, as q is the solution that decays; with q_m ~ (1+xi^2)^(m/2) int_xi^oo dt/(1+t^2)^(m+1) every term is positive.
 
@@ -30,7 +31,8 @@ def degrees(m, top):
 def strength(m, top):
     """lambda_lm of degrees(m, top)"""
     l = degrees(m, top)
-    return 2 * np.exp(gammaln((l + m) / 2 + 1) + gammaln((l - m) / 2 + 1) - gammaln((l + m + 1) / 2) - gammaln((l - m + 1) / 2))
+    up, down = (l + m) / 2, (l - m) / 2
+    return 2 * np.exp(gammaln(up + 1) + gammaln(down + 1) - gammaln(up + 0.5) - gammaln(down + 0.5))
 
 
 def legendre(m, top, eta):
