@@ -7,7 +7,7 @@
   scripts and the Rust sources in bibliography.md, every entry there used
 * strips-parallel, discs, pull-in, wedge-ideal, disc-wedge, cross-capacitance, guard-gaps and closed-domains in full, with
   a second route to the wedge formulas, of strips and of discs, and to the rectangle
-* discs: coaxial thin pairs of equal and unequal size from Love's equations, two tilted pairs and a thick pair again
+* discs: the harmonics against the sum over their charge; coaxial thin pairs of equal and unequal size from Love's equations, two tilted pairs and a thick pair again
 * figures that two files have in common: squares with plates, the 180 degree wedge with coplanar strips, hinged strips with
   tip rise 0 with parallel strips, parallel strips with strips.json
 
@@ -30,6 +30,7 @@ import discs_thick
 import discs_tilted
 import guard_gaps
 import pull_in
+import spheroid
 import store
 import strips_parallel
 import wedge_ideal
@@ -135,6 +136,21 @@ def check_second_routes():
         verdict(far < mp.mpf("1e-20"), f"cross-capacitance of rectangles against the series: {float(far):.0e}")
 
 
+def check_harmonics():
+    """potential and field of a disc from the harmonics, and from its charge point by point"""
+    axes = discs_tilted.rotation(0.7, -0.4)
+    disc = discs_tilted.Disc(1.3, (0.2, -0.1, 0.4), axes, (48, 24), False)
+    rng = np.random.default_rng(1)
+    w = np.where(np.concatenate([spheroid.degrees(m, disc.top) for m, _ in disc.modes]) < 9,
+                 rng.standard_normal(disc.start[-1]), 0.0)
+    points = np.array([[1.5, 0.7, 1.9], [-0.9, 1.1, -1.2], [0.3, -2.0, 0.5]])
+    apart = points[:, None] - disc.points.reshape(-1, 3)
+    r, q = np.linalg.norm(apart, axis=2), disc.charge(w).ravel()
+    far = max(np.max(np.abs(disc.potential(points, w) - (q / (4 * np.pi * r)).sum(axis=1))),
+              np.max(np.abs(disc.field(points, w) - np.einsum("q,pqk->pk", q, apart / (4 * np.pi * r[..., None] ** 3)))))
+    verdict(far < 1e-12, f"harmonics of a disc, potential and field against the sum over its charge: {far:.1e}")
+
+
 def check_discs(docs):
     far, count = 0.0, 0
     for case in docs["discs-tilted"]["cases"]:
@@ -187,6 +203,7 @@ def main():
     check_files(docs)
     check_recomputed(docs)
     check_second_routes()
+    check_harmonics()
     check_discs(docs)
     check_between_files(docs)
     count = sum(len(c["value"]) for d in docs.values() for c in d["cases"])
