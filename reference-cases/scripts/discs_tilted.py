@@ -14,7 +14,7 @@ the normal (or one of them is 0), the plane through them and z is one of symmetr
 
 --order: other numbers of harmonics than those stored with the case. --check: the potential at other points of both discs,
 force and torque against difference quotients of the energy, action against reaction, and the lower disc seen from the
-upper one. The cases take a second to a minute each; --check some forty times that.
+upper one. A case takes up to twenty seconds, --check some forty times that.
 """
 import os
 
