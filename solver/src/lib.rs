@@ -16,6 +16,7 @@ mod metal;
 mod modes;
 mod operator;
 mod separable;
+mod sheet;
 mod shell;
 mod stack;
 mod wedge;

@@ -10,7 +10,8 @@ use ndarray::Array2;
 use tiltgap_meshes::{Axis, NodeBox};
 
 use crate::modes::Modes;
-use crate::shell::{Part, Shell};
+use crate::sheet::Sheet;
+use crate::shell::Shell;
 use crate::stack::{Ladder, Link, Tridiagonal};
 
 /// One axis of the box.
@@ -44,10 +45,6 @@ impl Side {
         Side::new(cells.iter().map(|h| 1.0 / h).collect(), &halves, walls)
     }
 
-    fn nodes(&self) -> usize {
-        self.masses.len()
-    }
-
     fn is_inside(&self, k: usize) -> bool {
         self.inside[0] <= k && k <= self.inside[1]
     }
@@ -59,130 +56,183 @@ impl Side {
         if first > 0 {
             nodes.push(0);
         }
-        if last + 1 < self.nodes() && (last > first || nodes.is_empty()) {
+        if last + 1 < self.masses.len() && (last > first || nodes.is_empty()) {
             nodes.push(last - first);
         }
         nodes
     }
 }
 
+/// A node of the box: its number in the box, and its place in the row of values of a [`Shell`].
+struct Node {
+    number: usize,
+    place: usize,
+}
+
+/// An edge of the box with at least one end on the surface.
+struct Edge {
+    ends: [usize; 2],
+    conductance: f64,
+}
+
+/// What is inside a box: the layer next to the surface, and the systems of the planes.
+struct Inside {
+    shell: Shell,
+    system: Tridiagonal,
+    /// Its nodes next to the surface.
+    layer: Vec<Node>,
+}
+
 /// A box of metal in a body.
 pub struct Metal {
-    /// Where the box begins in the body, along x and y.
-    at: [usize; 2],
-    sides: [Side; 3],
-    /// The layer next to the surface, and the system of the planes inside; none if there is no node inside.
-    inner: Option<(Shell, Tridiagonal)>,
+    /// Nodes in the box.
+    count: usize,
+    /// The nodes of the surface, in the planes of the body.
+    surface: Vec<Node>,
+    edges: Vec<Edge>,
+    /// None if there is no node inside.
+    inside: Option<Inside>,
+}
+
+impl Inside {
+    fn new(
+        axes: [&Axis; 2],
+        sides: &[Side; 3],
+        piece: &NodeBox,
+        number: impl Fn([usize; 3]) -> usize,
+    ) -> Self {
+        let [x, y] = [(0, piece.i[0]), (1, piece.j[0])].map(|(d, first)| {
+            let [from, to] = sides[d].inside.map(|n| first + n);
+            let modes = Modes::within(axes[d], from, to);
+            (modes.on(from, to), modes.values)
+        });
+        let first = [0, 1, 2].map(|d| sides[d].inside[0]);
+        let [ni, nj, nk] = [0, 1, 2].map(|d| sides[d].inside[1] + 1 - first[d]);
+        let (rows, columns) = (sides[0].next_to_walls(), sides[1].next_to_walls());
+        let at_rim = |i: usize, j: usize| rows.contains(&i) || columns.contains(&j);
+        let is_face = |k: usize| k == 0 || k + 1 == nk;
+        let sheet = Sheet { x: x.0, y: y.0.vectors() };
+        let rim = Array2::from_shape_fn((ni, nj), |(i, j)| f64::from(u8::from(at_rim(i, j))));
+        let shell = Shell::new(sheet, nk, Array2::ones((ni, nj)), &rim, rows.clone(), columns.clone());
+        let mut layer = Vec::new();
+        for plane in 0..nk {
+            for i in 0..ni {
+                for j in (0..nj).filter(|&j| is_face(plane) || at_rim(i, j)) {
+                    let number = number([first[0] + i, first[1] + j, first[2] + plane]);
+                    layer.push(Node { number, place: shell.place(plane, [i, j]) });
+                }
+            }
+        }
+        let z = &sides[2];
+        let diagonal = |k: usize| {
+            Array2::from_shape_fn(shell.modes(), |(a, b)| {
+                z.rungs[k - 1] + z.rungs[k] + (x.1[a] + y.1[b]) * z.masses[k]
+            })
+        };
+        let diagonals: Vec<_> = (1..=nk).map(diagonal).collect();
+        let system = Tridiagonal::new(&diagonals, (1..nk).map(|k| Link::Same(-z.rungs[k])).collect());
+        Inside { shell, system, layer }
+    }
+
+    /// Potentials of the layer that belong to charges on it, in place; by number in the box.
+    fn respond(&self, values: &mut [f64]) {
+        let shell = &self.shell;
+        let mut charge = vec![0.0; shell.len()];
+        for node in &self.layer {
+            charge[node.place] = values[node.number];
+        }
+        let (source, mut response) = (shell.forward(&charge), shell.spectrum());
+        let (nx, planes, ny) = self.system.dim();
+        let mut modal = vec![0.0; planes * ny];
+        for a in 0..nx {
+            shell.spread(&source, a, &mut modal);
+            self.system.solve(a, &mut modal);
+            shell.gather(&mut response, a, &modal);
+        }
+        let potential = shell.backward(&response);
+        for node in &self.layer {
+            values[node.number] = potential[node.place];
+        }
+    }
 }
 
 impl Metal {
-    /// The metal of `piece`, a box of a body whose nodes begin at `corner` along x and y.
-    pub fn new(axes: [&Axis; 2], ladder: &Ladder, piece: &NodeBox, corner: [usize; 2]) -> Metal {
+    /// The metal of `piece`, a box of a body whose surface is `shell`, whose nodes begin at `corner` along x and y.
+    pub fn new(
+        axes: [&Axis; 2],
+        ladder: &Ladder,
+        piece: &NodeBox,
+        corner: [usize; 2],
+        shell: &Shell,
+    ) -> Metal {
         let [below, above] = piece.k;
         let sides = [
             Side::lateral(axes[0], piece.i),
             Side::lateral(axes[1], piece.j),
             Side::new(ladder.rungs[below..above].to_vec(), &ladder.halves[below..above], [true; 2]),
         ];
-        let inner = sides.iter().all(|s| s.inside[0] <= s.inside[1]).then(|| {
-            let [x, y] = [(0, piece.i[0]), (1, piece.j[0])].map(|(d, first)| {
-                let [from, to] = sides[d].inside.map(|n| first + n);
-                let modes = Modes::within(axes[d], from, to);
-                (modes.on(from, to), modes.values)
-            });
-            let [ni, nj, nk] = [0, 1, 2].map(|d| sides[d].inside[1] + 1 - sides[d].inside[0]);
-            let (rows, columns) = (sides[0].next_to_walls(), sides[1].next_to_walls());
-            let rim = Array2::from_shape_fn((ni, nj), |(i, j)| {
-                f64::from(u8::from(rows.contains(&i) || columns.contains(&j)))
-            });
-            let parts = (0..nk).map(|k| if k == 0 || k + 1 == nk { Part::Face } else { Part::Rim }).collect();
-            let shell = Shell::new(x.0, y.0.vectors(), parts, [Array2::ones((ni, nj)), rim], rows, columns);
-            let z = &sides[2];
-            let diagonal = |k: usize| {
-                Array2::from_shape_fn(shell.modes(), |(a, b)| {
-                    z.rungs[k - 1] + z.rungs[k] + (x.1[a] + y.1[b]) * z.masses[k]
-                })
-            };
-            let diagonals = (1..=nk).map(diagonal).collect();
-            let links = (1..nk).map(|k| Link::Same(-z.rungs[k])).collect();
-            let system = Tridiagonal::new(diagonals, links);
-            (shell, system)
-        });
-        Metal { at: [piece.i[0] - corner[0], piece.j[0] - corner[1]], sides, inner }
-    }
-
-    /// Calls `act` with the two ends of each edge of the box along axis `d` and its conductance.
-    fn for_each_edge(&self, d: usize, mut act: impl FnMut([usize; 3], [usize; 3], f64)) {
-        let [x, y, z] = &self.sides;
-        let (nx, ny, nz) = (x.nodes(), y.nodes(), z.nodes());
-        let step = |n: usize, axis: usize| if axis == d { n - 1 } else { n };
-        for k in 0..step(nz, 2) {
-            for i in 0..step(nx, 0) {
-                for j in 0..step(ny, 1) {
-                    let weight = match d {
-                        0 => x.rungs[i] * y.masses[j] * z.masses[k],
-                        1 => y.rungs[j] * x.masses[i] * z.masses[k],
-                        _ => z.rungs[k] * x.masses[i] * y.masses[j],
-                    };
-                    let mut other = [i, j, k];
-                    other[d] += 1;
-                    act([i, j, k], other, weight);
-                }
-            }
-        }
-    }
-
-    /// Adds to `charge` what the box sets against the potential on its surface; one array for each plane of the body.
-    pub fn add_charges(&self, potential: &[Array2<f64>], charge: &mut [Array2<f64>]) {
-        let [x, y, z] = &self.sides;
-        let dim = (x.nodes(), y.nodes());
-        let surface = |[i, j, k]: [usize; 3]| !(x.is_inside(i) && y.is_inside(j) && z.is_inside(k));
-        let nk = z.nodes();
-        let mut own: Vec<Array2<f64>> = (0..nk)
-            .map(|k| {
-                Array2::from_shape_fn(dim, |(i, j)| {
-                    if surface([i, j, k]) {
-                        potential[k][[self.at[0] + i, self.at[1] + j]]
-                    } else {
-                        0.0
+        let dim = [0, 1, 2].map(|d| sides[d].masses.len());
+        let number = |at: [usize; 3]| (at[2] * dim[0] + at[0]) * dim[1] + at[1];
+        let is_inside = |at: [usize; 3]| (0..3).all(|d| sides[d].is_inside(at[d]));
+        let offset = [piece.i[0] - corner[0], piece.j[0] - corner[1]];
+        let (mut surface, mut edges) = (Vec::new(), Vec::new());
+        for k in 0..dim[2] {
+            for i in 0..dim[0] {
+                for j in 0..dim[1] {
+                    let at = [i, j, k];
+                    if !is_inside(at) {
+                        let place = shell.place(k, [offset[0] + i, offset[1] + j]);
+                        surface.push(Node { number: number(at), place });
                     }
-                })
-            })
-            .collect();
-        if let Some((shell, system)) = &self.inner {
-            let first = [x.inside[0], y.inside[0], z.inside[0]];
-            let (ni, nj) = shell.mask(0).dim();
-            let mut source: Vec<Array2<f64>> = (0..shell.planes()).map(|_| Array2::zeros((ni, nj))).collect();
-            for d in 0..3 {
-                self.for_each_edge(d, |a, b, weight| {
-                    for (from, to) in [(a, b), (b, a)] {
-                        if surface(from) && !surface(to) {
-                            let at = [0, 1, 2].map(|d| to[d] - first[d]);
-                            source[at[2]][[at[0], at[1]]] += weight * own[from[2]][[from[0], from[1]]];
+                    for d in (0..3).filter(|&d| at[d] + 1 < dim[d]) {
+                        let mut next = at;
+                        next[d] += 1;
+                        if is_inside(at) && is_inside(next) {
+                            continue;
                         }
+                        let across = (0..3).filter(|&e| e != d).map(|e| sides[e].masses[at[e]]);
+                        let conductance = sides[d].rungs[at[d]] * across.product::<f64>();
+                        edges.push(Edge { ends: [number(at), number(next)], conductance });
                     }
-                });
-            }
-            let mut modal: Vec<Array2<f64>> =
-                source.iter().enumerate().map(|(p, v)| shell.forward(p, v.view())).collect();
-            system.solve(&mut modal);
-            for (p, modal) in modal.iter().enumerate() {
-                let nodal = shell.backward(p, modal.view());
-                for ((i, j), v) in nodal.indexed_iter() {
-                    own[first[2] + p][[first[0] + i, first[1] + j]] = *v;
                 }
             }
         }
-        // `own` now differs from zero on the surface and the layer next to it, which is all that the surface sees.
-        for d in 0..3 {
-            self.for_each_edge(d, |a, b, weight| {
-                let flow = weight * (own[a[2]][[a[0], a[1]]] - own[b[2]][[b[0], b[1]]]);
-                for (at, flow) in [(a, flow), (b, -flow)] {
-                    if surface(at) {
-                        charge[at[2]][[self.at[0] + at[0], self.at[1] + at[1]]] += flow;
-                    }
-                }
-            });
+        let hollow = sides.iter().all(|s| s.inside[0] <= s.inside[1]);
+        let inside = hollow.then(|| Inside::new(axes, &sides, piece, number));
+        Metal { count: dim.iter().product(), surface, edges, inside }
+    }
+
+    /// Charges that belong to potentials: what flows out of each node through the edges of the surface.
+    fn flows(&self, values: &[f64]) -> Vec<f64> {
+        let mut out = vec![0.0; self.count];
+        for Edge { ends: [a, b], conductance } in &self.edges {
+            let flow = conductance * (values[*a] - values[*b]);
+            out[*a] += flow;
+            out[*b] -= flow;
+        }
+        out
+    }
+
+    /// Adds to `charge` what the box sets against the potential on its surface; both as rows of values of the body's shell.
+    pub fn add_charges(&self, potential: &[f64], charge: &mut [f64]) {
+        let mut values = vec![0.0; self.count];
+        for node in &self.surface {
+            values[node.number] = potential[node.place];
+        }
+        let mut out = self.flows(&values);
+        if let Some(inside) = &self.inside {
+            // What flows into the layer raises it, and what it then sends back comes on top.
+            let mut layer = vec![0.0; self.count];
+            for node in &inside.layer {
+                layer[node.number] = -out[node.number];
+            }
+            inside.respond(&mut layer);
+            for (out, back) in out.iter_mut().zip(self.flows(&layer)) {
+                *out += back;
+            }
+        }
+        for node in &self.surface {
+            charge[node.place] += out[node.number];
         }
     }
 }

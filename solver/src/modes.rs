@@ -150,6 +150,16 @@ impl Modes {
         self.values.len()
     }
 
+    /// The transform of values on the nodes from `from` to `to` that are first spread over the axis: with E the matrix
+    /// `spread` (those nodes down, all nodes across) and M the masses, E M Q.
+    pub fn spread(&self, from: usize, to: usize, spread: &Array2<f64>, masses: &[f64]) -> Transform {
+        let mut vectors = self.transform.vectors();
+        for (k, mut row) in vectors.outer_iter_mut().enumerate() {
+            row *= masses[k];
+        }
+        Transform::new(spread.dot(&vectors), self.centre == Some(from + to))
+    }
+
     /// The transform on the nodes from `from` to `to`, both included.
     pub fn on(&self, from: usize, to: usize) -> Transform {
         let vectors = self.transform.vectors().slice_axis(Direction(0), Slice::from(from..=to)).to_owned();
@@ -171,6 +181,14 @@ impl Transform {
         Transform::Folded {
             even: block((h + 1, modes - odd_modes), 0),
             odd: block((h, odd_modes), modes - odd_modes),
+        }
+    }
+
+    /// Number of modes.
+    pub fn modes(&self) -> usize {
+        match self {
+            Transform::Whole(vectors) => vectors.ncols(),
+            Transform::Folded { even, odd } => even.ncols() + odd.ncols(),
         }
     }
 

@@ -190,19 +190,20 @@ impl<const K: usize> Preconditioner<K> for Separable {
                     y.transform.forward(nodal, rows.reversed_axes());
                     scratch.copy_from_slice(modal);
                     columns.solve(a, scratch, K, lowest);
-                    planes.iter().flat_map(|k| scratch[k * K * ny..(k + 1) * K * ny].to_vec()).collect()
+                    let of =
+                        |r: usize| planes.iter().flat_map(move |k| (k * K + r) * ny..(k * K + r + 1) * ny);
+                    (0..K).flat_map(of).map(|n| scratch[n]).collect()
                 },
             )
             .collect();
         let (charges, iterations) = hold.charges::<K>(&kept)?;
         second.par_chunks_mut(slab).zip(first.par_chunks_mut(half_way)).enumerate().for_each(
             |(a, (modal, nodal))| {
-                for (p, k) in planes.iter().enumerate() {
-                    for r in 0..K {
+                let mut charges = charges[a].chunks_exact(ny);
+                for r in 0..K {
+                    for (k, charges) in planes.iter().zip(&mut charges) {
                         let row = &mut modal[(k * K + r) * ny..(k * K + r + 1) * ny];
-                        for (v, c) in row.iter_mut().zip(charges[p * K + r].row(a)) {
-                            *v -= c;
-                        }
+                        row.iter_mut().zip(charges).for_each(|(v, c)| *v -= c);
                     }
                 }
                 columns.solve(a, modal, K, 0);

@@ -4,7 +4,7 @@
 //! is tridiagonal: inside a plate its planes are neighbours, across the gap one coupling is left, and the spaces
 //! below and above add to the outermost planes. Its inverse is the response of the planes to charges on them.
 
-use ndarray::{Array2, Zip};
+use ndarray::{Array2, Array3, Axis as Direction, Zip};
 use tiltgap_meshes::{End, Grid};
 
 /// The untilted bench along z: what each cell adds for a mode of eigenvalue lambda, and what stands at the ends.
@@ -66,70 +66,64 @@ pub enum Link {
     Each(Array2<f64>),
 }
 
-impl Link {
-    /// to -= coupling times from times weight.
-    fn eliminate(&self, to: &mut Array2<f64>, from: &Array2<f64>, weight: &Array2<f64>) {
-        match self {
-            Link::Same(c) => Zip::from(to).and(from).and(weight).for_each(|t, f, w| *t -= c * f * w),
-            Link::Each(c) => {
-                Zip::from(to).and(c).and(from).and(weight).for_each(|t, c, f, w| *t -= c * f * w)
-            }
-        }
-    }
-
-    /// to = (to - coupling times from) times weight.
-    fn sweep(&self, to: &mut Array2<f64>, from: &Array2<f64>, weight: &Array2<f64>) {
-        match self {
-            Link::Same(c) => Zip::from(to).and(from).and(weight).for_each(|t, f, w| *t = (*t - c * f) * w),
-            Link::Each(c) => {
-                Zip::from(to).and(c).and(from).and(weight).for_each(|t, c, f, w| *t = (*t - c * f) * w)
-            }
-        }
-    }
-}
-
 /// Factored tridiagonal systems of planes, one for each pair of modes.
 pub struct Tridiagonal {
-    /// Reciprocal pivots of the planes.
-    pivots: Vec<Array2<f64>>,
+    /// Reciprocal pivots: mode along x, plane, mode along y.
+    pivots: Array3<f64>,
     /// Couplings of each plane to the next one.
     links: Vec<Link>,
 }
 
 impl Tridiagonal {
     /// From the diagonal of each plane and the links between neighbours.
-    pub fn new(diagonals: Vec<Array2<f64>>, links: Vec<Link>) -> Tridiagonal {
-        let mut pivots: Vec<Array2<f64>> = Vec::with_capacity(diagonals.len());
-        for (p, mut diagonal) in diagonals.into_iter().enumerate() {
-            if p > 0 {
-                let last = &pivots[p - 1];
-                match &links[p - 1] {
-                    Link::Same(c) => Zip::from(&mut diagonal).and(last).for_each(|d, q| *d -= c * c * q),
-                    Link::Each(c) => {
-                        Zip::from(&mut diagonal).and(c).and(last).for_each(|d, c, q| *d -= c * c * q)
-                    }
+    pub fn new(diagonals: &[Array2<f64>], links: Vec<Link>) -> Tridiagonal {
+        let (nx, ny) = diagonals[0].dim();
+        let mut pivots = Array3::zeros((nx, diagonals.len(), ny));
+        for a in 0..nx {
+            for p in 0..diagonals.len() {
+                for b in 0..ny {
+                    let eliminated = match p.checked_sub(1).map(|last| (&links[last], last)) {
+                        Some((Link::Same(c), last)) => c * c * pivots[[a, last, b]],
+                        Some((Link::Each(c), last)) => c[[a, b]] * c[[a, b]] * pivots[[a, last, b]],
+                        None => 0.0,
+                    };
+                    pivots[[a, p, b]] = 1.0 / (diagonals[p][[a, b]] - eliminated);
                 }
             }
-            pivots.push(diagonal.mapv_into(|d| 1.0 / d));
         }
         Tridiagonal { pivots, links }
     }
 
-    /// Number of planes.
-    pub fn len(&self) -> usize {
-        self.pivots.len()
+    /// Number of modes along x, of planes and of modes along y.
+    pub fn dim(&self) -> (usize, usize, usize) {
+        self.pivots.dim()
     }
 
-    /// Solves in place.
-    pub fn solve(&self, planes: &mut [Array2<f64>]) {
-        planes[0] *= &self.pivots[0];
-        for p in 1..self.len() {
-            let (before, here) = planes.split_at_mut(p);
-            self.links[p - 1].sweep(&mut here[0], &before[p - 1], &self.pivots[p]);
+    /// Solves for mode `a` along x in place: plane down, mode along y across.
+    pub fn solve(&self, a: usize, planes: &mut [f64]) {
+        let (_, count, ny) = self.dim();
+        let pivots = self.pivots.index_axis(Direction(0), a);
+        let pivots = pivots.to_slice().expect("pivots of a mode are contiguous");
+        let of = |p: usize| &pivots[p * ny..(p + 1) * ny];
+        for (u, d) in planes[..ny].iter_mut().zip(of(0)) {
+            *u *= d;
         }
-        for p in (1..self.len()).rev() {
-            let (here, above) = planes.split_at_mut(p);
-            self.links[p - 1].eliminate(&mut here[p - 1], &above[0], &self.pivots[p - 1]);
+        for p in 1..count {
+            let (before, here) = planes.split_at_mut(p * ny);
+            let known = before[(p - 1) * ny..].iter();
+            let here = here[..ny].iter_mut().zip(known).zip(of(p));
+            match &self.links[p - 1] {
+                Link::Same(c) => here.for_each(|((u, l), d)| *u = (*u - c * l) * d),
+                Link::Each(c) => here.zip(c.row(a)).for_each(|(((u, l), d), c)| *u = (*u - c * l) * d),
+            }
+        }
+        for p in (1..count).rev() {
+            let (here, above) = planes.split_at_mut(p * ny);
+            let here = here[(p - 1) * ny..].iter_mut().zip(&above[..ny]).zip(of(p - 1));
+            match &self.links[p - 1] {
+                Link::Same(c) => here.for_each(|((u, v), d)| *u -= c * v * d),
+                Link::Each(c) => here.zip(c.row(a)).for_each(|(((u, v), d), c)| *u -= c * v * d),
+            }
         }
     }
 }
@@ -138,7 +132,8 @@ impl Tridiagonal {
 pub struct Stack {
     /// Planes of the lower and of the upper plate.
     planes: [usize; 2],
-    system: Tridiagonal,
+    /// Their tridiagonal systems: potentials of the planes that belong to charges on them.
+    pub system: Tridiagonal,
     /// What the space beyond adds to the lowest and to the highest plane.
     beyond: [Array2<f64>; 2],
     /// What the gap adds to the two facing planes, and the coupling that it makes between them.
@@ -181,24 +176,11 @@ impl Stack {
         diagonals[planes[0] - 1] += &first;
         diagonals[planes[0]] += &last;
         diagonals[count - 1] += &beyond[1];
-        Stack { planes, system: Tridiagonal::new(diagonals, links), beyond, gap: [first, last], across }
+        Stack { planes, system: Tridiagonal::new(&diagonals, links), beyond, gap: [first, last], across }
     }
 
-    /// The planes that face away from or towards the gap, ascending: two for a thick plate, one for a thin one.
-    pub fn faces(&self) -> Vec<usize> {
-        let [lower, upper] = self.planes;
-        let mut faces = vec![0, lower - 1, lower, lower + upper - 1];
-        faces.dedup();
-        faces
-    }
-
-    /// Potentials of the planes that belong to charges on them, in place.
-    pub fn respond(&self, planes: &mut [Array2<f64>]) {
-        self.system.solve(planes);
-    }
-
-    /// Charges that the space outside of the metal holds for given potentials of the [`faces`](Stack::faces), as if they
-    /// were planes without end.
+    /// Charges that the space outside of the metal holds for given potentials of the faces, as if they were planes without
+    /// end; ascending, a plate without thickness has one face.
     pub fn outside(&self, potential: &[Array2<f64>]) -> Vec<Array2<f64>> {
         let last = potential.len() - 1;
         let facing = usize::from(self.planes[0] > 1);
