@@ -12,6 +12,7 @@ use ndarray::Array2;
 use rayon::prelude::*;
 use tiltgap_meshes::{Axis, Body, NodeBox};
 
+use crate::holes::Holes;
 use crate::metal::Metal;
 use crate::modes::Modes;
 use crate::sheet::Sheet;
@@ -28,6 +29,8 @@ struct Plate {
     metals: Vec<Metal>,
     /// Modes on the nodes of a face, its values taken to fade out beyond its edges.
     faded: Sheet,
+    /// The slot of a guard ring.
+    holes: Holes,
 }
 
 /// The plates' own operator, ready to be inverted.
@@ -112,7 +115,8 @@ impl Hold {
                 let [from, to] = ranges[d];
                 modes[d].spread(from, to, &beyond_edges(from, to, masses[d].len()), &masses[d])
             });
-            Plate { shell, metals, faded: Sheet { x, y: y.vectors() } }
+            let holes = Holes::new(shell.face_mask());
+            Plate { shell, metals, faded: Sheet { x, y: y.vectors() }, holes }
         });
         let planes = bodies.iter().flat_map(|b| b.hull.k[0]..=b.hull.k[1]).collect();
         Hold { planes, stack, plates, tolerance }
@@ -176,15 +180,17 @@ impl Hold {
         let potential: Vec<Array2<f64>> = each
             .clone()
             .map(|(n, face)| {
-                let Plate { shell, faded, .. } = &self.plates[n];
-                faded.forward(shell.face(face, &v[n]))
+                let Plate { shell, faded, holes, .. } = &self.plates[n];
+                let mut whole = shell.face(face, &v[n]).to_owned();
+                holes.fill(&mut whole);
+                faded.forward(whole.view())
             })
             .collect();
         for ((n, face), modal) in each.zip(self.stack.outside(&potential)) {
-            let Plate { shell, faded, .. } = &self.plates[n];
+            let Plate { shell, faded, holes, .. } = &self.plates[n];
             let mut nodal = shell.face_mut(face, &mut charge[n]);
             faded.backward(modal.view(), nodal.view_mut());
-            nodal *= shell.face_mask();
+            holes.empty(&mut nodal);
         }
         for (n, plate) in self.plates.iter().enumerate() {
             for metal in &plate.metals {

@@ -11,6 +11,7 @@ mod extrapolate;
 mod family;
 mod field;
 mod hold;
+mod holes;
 mod level;
 mod metal;
 mod modes;
