@@ -67,11 +67,6 @@ pub fn strips(case: &Value) -> Arrangement {
     )
 }
 
-/// Whether both plates are sheets.
-pub fn thin(arrangement: &Arrangement) -> bool {
-    arrangement.lower.thickness_m == 0.0 && arrangement.upper.thickness_m == 0.0
-}
-
 /// An assessment in the units of the reference cases: permittivity and voltage 1, no hinge.
 pub fn solve(arrangement: Arrangement, connection: Connection, accuracy: f64) -> Result<Assessment, Error> {
     let question =
@@ -103,16 +98,16 @@ pub fn strips_at(accuracy: f64) -> Vec<Solved> {
 /// A plate case, how it is wired and what came of it.
 pub type SolvedPlates = (Value, Connection, Assessment);
 
-/// All thin plate cases in both connections at the default accuracy, solved once for all tests.
+/// All plate cases in both connections at the default accuracy, solved once for all tests.
 pub fn plates_at_default() -> &'static [SolvedPlates] {
     static SOLVED: OnceLock<Vec<SolvedPlates>> = OnceLock::new();
     SOLVED.get_or_init(|| plates_at(DEFAULT))
 }
 
-/// All thin plate cases in both connections at some accuracy.
+/// All plate cases in both connections at some accuracy.
 pub fn plates_at(accuracy: f64) -> Vec<SolvedPlates> {
     let mut all = Vec::new();
-    for case in family("plates").into_iter().filter(|case| thin(&plates(case))) {
+    for case in family("plates") {
         for connection in [Connection::Floating, Connection::Grounded] {
             let solved = solve(plates(&case), connection, accuracy);
             all.push((case.clone(), connection, solved.unwrap_or_else(|e| panic!("{}: {e}", name(&case)))));

@@ -51,6 +51,8 @@ const FIRST_IN_THE_PLANE: f64 = 4.0;
 /// roll and shift.
 const TOLERANCE_PART: f64 = 0.1;
 const TOLERANCE_RANGE: [f64; 2] = [1e-9, 1e-6];
+/// By what the solver tolerance is lowered for a guarded plate.
+const GUARDED_PART: f64 = 0.01;
 /// By what the uncertainty falls at best when one more level is solved: an error of fourth order, and some luck.
 const BEST_STEP: f64 = 0.15;
 /// Memory set aside for a node of the finest level, in bytes: matrix, fields and preconditioner together. Measured peaks
@@ -212,6 +214,10 @@ impl Family {
         let mut level_params = LevelParams::default();
         level_params.outer.tolerance =
             (TOLERANCE_PART * params.accuracy).clamp(TOLERANCE_RANGE[0], TOLERANCE_RANGE[1]);
+        if arrangement.guard.is_some() {
+            // The charge of a guarded plate is of first order in the residual, that of a whole conductor of second.
+            level_params.outer.tolerance *= GUARDED_PART;
+        }
         let in_the_plane = arrangement.dimensions == Dimensions::Two;
         // A gap as wide as the plates stretches the outside until its levels follow the expansion late: squares at gaps
         // of 0.5 to 2 sides were off by up to 5 plain uncertainties at levels 3-4-6.
