@@ -9,6 +9,7 @@ use tiltgap_meshes::{Arrangement, Dimensions, GridOptions, Surroundings, Vector3
 
 use crate::corner::cross;
 use crate::family::{Family, Quantities};
+use crate::level::Level;
 use crate::wedge::wedge_factors;
 use crate::Error;
 
@@ -22,6 +23,16 @@ pub enum Connection {
     Grounded,
     /// The supply floats: V between the plates, total charge zero.
     Floating,
+}
+
+impl Connection {
+    /// Potentials of the lower and the upper plate, 1 V apart, in this wiring.
+    pub fn potentials(self, level: &Level) -> [f64; 2] {
+        match self {
+            Connection::Grounded => [0.0, 1.0],
+            Connection::Floating => level.neutral(),
+        }
+    }
 }
 
 /// Where the beam turns: at (-arm, height) from the centre of the upper plate's facing surface when parallel.
@@ -194,7 +205,10 @@ struct Units {
 
 impl Question {
     /// Checks everything but the arrangement, which the grid checks.
-    fn check(&self) -> Result<(), Error> {
+    ///
+    /// # Errors
+    /// A sentence about the first value that will not do.
+    pub fn check(&self) -> Result<(), Error> {
         let wrong = |text: String| Err(Error::Question(text));
         if !self.voltage_v.is_finite() || self.voltage_v == 0.0 || self.voltage_v.abs() > VOLTAGE_LIMIT_V {
             return wrong(format!(
@@ -281,11 +295,8 @@ pub fn assess(
     let options = GridOptions::suited(arrangement);
     let size = arrangement.size_m();
     let offset = question.hinge.map(|h| hinge_offset_m(arrangement, &h).map(|c| c / size));
-    let quantities = |level: &crate::Level| {
-        let potential = match question.connection {
-            Connection::Grounded => [0.0, 1.0],
-            Connection::Floating => level.neutral(),
-        };
+    let quantities = |level: &Level| {
+        let potential = question.connection.potentials(level);
         let wrench = level.wrench(potential);
         let hinge = offset.map(|o| {
             let of_force = cross(o, wrench.force);

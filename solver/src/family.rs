@@ -55,7 +55,7 @@ const TOLERANCE_RANGE: [f64; 2] = [1e-9, 1e-6];
 const BEST_STEP: f64 = 0.15;
 /// Memory set aside for a node of the finest level, in bytes: matrix, fields and preconditioner together. Measured peaks
 /// of the whole process are 260 to 300 with half symmetry and 340 with roll; the rest is margin.
-const BYTES_PER_NODE: u64 = 600;
+pub const BYTES_PER_NODE: u64 = 600;
 
 /// Numbers of one level, in units of the grid.
 #[derive(Clone, Copy, Debug)]

@@ -1,0 +1,161 @@
+//! Picture of the field: lines of force that begin at equal charges, so that their density shows the strength of the field.
+
+use plotters::style::RGBColor;
+use tiltgap_solver::Level;
+
+use super::caption;
+use super::lines::{thinned, Tracer};
+use super::potential::{Bands, Equipotentials};
+use super::profile::{profiles, Profile};
+use super::scene::Scene;
+use super::sheet::{Point, Sheet};
+use super::theme;
+use super::views::{self, View};
+
+/// Lines on the gap side of the upper plate, in the main view and, more densely, in the enlarged ones.
+const LINES: usize = 44;
+const LINES_ENLARGED: usize = 160;
+/// Where a line begins: this part of a cell off the plate.
+const OFF_PLATE: f64 = 0.25;
+/// Length of an arrowhead and half its width, in mm; the shortest line that bears one.
+const ARROW: [f64; 2] = [1.5, 0.5];
+const ARROW_LINE: f64 = 3.0;
+/// Ink of the lines.
+const LINE_INK: RGBColor = theme::UPPER;
+
+/// Places (in numbers of nodes) that cut the charge of one side of a plate into parts of `part`: in the middle of each.
+fn seeds(profile: &Profile, side: usize, part: f64) -> Vec<f64> {
+    let charge: Vec<f64> =
+        profile.density[side].iter().zip(&profile.share_mm).map(|(d, s)| (d * s).abs()).collect();
+    let total: f64 = charge.iter().sum();
+    let count = (total / part).round() as usize;
+    let mut places = Vec::with_capacity(count);
+    let (mut sum, mut n) = (0.0, 0);
+    for m in 0..count {
+        let target = total * (m as f64 + 0.5) / count as f64;
+        while n + 1 < charge.len() && sum + charge[n] < target {
+            sum += charge[n];
+            n += 1;
+        }
+        // The charge of a node is spread over half a cell on either side of it, within the plate.
+        let last = (charge.len() - 1) as f64;
+        let (from, to) = ((n as f64 - 0.5).max(0.0), (n as f64 + 0.5).min(last));
+        let t = if charge[n] > 0.0 { (target - sum) / charge[n] } else { 0.5 };
+        places.push(profile.first as f64 + from + t.clamp(0.02, 0.98) * (to - from));
+    }
+    places
+}
+
+/// All lines, each in the direction of the field, in mm. `part` is the charge of a line (C/m^2 times mm).
+fn lines(scene: &Scene, plates: &[Profile; 2], part: f64, within: [[f64; 2]; 2]) -> Vec<Vec<[f64; 2]>> {
+    let tracer = Tracer::new(scene);
+    let mut all = Vec::new();
+    // From the upper plate; then what reaches the lower one from elsewhere.
+    for (plate, nodes) in [(1, scene.nodes[1]), (0, scene.nodes[0])] {
+        if scene.outlines[plate].is_none() {
+            continue;
+        }
+        for side in 0..2 {
+            let k = nodes[1][side] as f64 + if side == 0 { -OFF_PLATE } else { OFF_PLATE };
+            for i in seeds(&plates[plate], side, part) {
+                let node = (i.round() as usize - plates[plate].first).min(plates[plate].x_mm.len() - 1);
+                let sign = plates[plate].density[side][node].signum();
+                let traced = tracer.trace([i, k], sign, within);
+                if plate == 0 && traced.hit {
+                    continue;
+                }
+                let mut line = traced.points;
+                if sign < 0.0 {
+                    line.reverse();
+                }
+                all.push(line);
+            }
+        }
+    }
+    all
+}
+
+/// A line with an arrowhead in its middle.
+fn with_arrow(sheet: &mut Sheet, line: &[Point]) {
+    sheet.line(line.to_vec(), LINE_INK, theme::HAIR * 1.3);
+    let step = |p: &[Point]| (p[1][0] - p[0][0]).hypot(p[1][1] - p[0][1]);
+    let length: f64 = line.windows(2).map(step).sum();
+    if length < ARROW_LINE {
+        return;
+    }
+    let mut left = length / 2.0;
+    for pair in line.windows(2) {
+        let one = step(pair);
+        if left > one || one == 0.0 {
+            left -= one;
+            continue;
+        }
+        let u = [0, 1].map(|d| (pair[1][d] - pair[0][d]) / one);
+        let centre = [0, 1].map(|d| pair[0][d] + left * u[d]);
+        let at = |along: f64, aside: f64| {
+            [centre[0] + along * u[0] - aside * u[1], centre[1] + along * u[1] + aside * u[0]]
+        };
+        let [long, half] = ARROW;
+        sheet.area(vec![at(long / 2.0, 0.0), at(-long / 2.0, half), at(-long / 2.0, -half)], LINE_INK);
+        return;
+    }
+}
+
+/// The picture.
+pub fn field(scene: &Scene, level: &Level) -> Sheet {
+    let text = [
+        format!("Field lines {}, true to scale; fine: equipotentials", caption::place(scene.setup)),
+        caption::circumstances(scene.setup),
+    ];
+    let (views, bottom) = views::views(scene, caption::height(text.len()));
+    let plates = profiles(scene, level);
+    let bands = Bands::new(scene.plates_v);
+    let equipotentials = Equipotentials::new(scene, &bands);
+    let title = format!("{}: {}", caption::plain(&scene.setup.bench.title), text[0]);
+    let mut sheet = Sheet::new(&title, bottom);
+    caption::caption(&mut sheet, &scene.setup.bench.title, &text);
+    sheet.layer("equipotentials");
+    equipotentials.lines(&mut sheet, &bands, &views, theme::FAINT);
+    sheet.layer("field");
+    // The gap side of the upper plate is its lower one.
+    let upper = &plates[1];
+    let on_gap: f64 = upper.density[0].iter().zip(&upper.share_mm).map(|(d, s)| (d * s).abs()).sum();
+    let within = [views[0].panel.x.range, views[0].panel.y.range];
+    for (enlarged, count) in [(false, LINES), (true, LINES_ENLARGED)] {
+        let chosen: Vec<&View> = views.iter().filter(|v| v.detail.is_some() == enlarged).collect();
+        if chosen.is_empty() || on_gap == 0.0 {
+            continue;
+        }
+        let all = lines(scene, &plates, on_gap / count as f64, within);
+        for View { panel, .. } in chosen {
+            for line in &all {
+                let line: Vec<Point> = line.iter().map(|p| panel.place(*p)).collect();
+                for part in panel.clip_line(&line) {
+                    with_arrow(&mut sheet, &thinned(&part));
+                }
+            }
+        }
+    }
+    views::plates(&mut sheet, scene, &views);
+    views::frames(&mut sheet, &views);
+    sheet
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn seeds_stand_at_equal_charges() {
+        // Density 1 over a plate of five nodes: the nodes at the edges have half of a share.
+        let share_mm = vec![0.5, 1.0, 1.0, 1.0, 0.5];
+        let density = [vec![1.0; 5], vec![0.0; 5]];
+        let profile = Profile { first: 10, x_mm: vec![0.0; 5], density, share_mm };
+        let places = seeds(&profile, 0, 0.5);
+        assert_eq!(places.len(), 8);
+        for (n, place) in places.iter().enumerate() {
+            assert!((place - (10.25 + 0.5 * n as f64)).abs() < 1e-12, "{places:?}");
+        }
+        assert!(seeds(&profile, 1, 0.5).is_empty());
+    }
+}
