@@ -5,7 +5,7 @@ use tiltgap_solver::Connection;
 use crate::assess::Setup;
 
 use super::scene::{plane_m, MM};
-use super::sheet::{fitted, Anchor, Sheet};
+use super::sheet::{fitted, text_width, Anchor, Sheet};
 use super::theme;
 use super::ticks::short;
 
@@ -55,25 +55,64 @@ pub fn place(setup: &Setup) -> String {
     }
 }
 
-/// Height of a caption of this many lines below the title, in mm.
-pub fn height(lines: usize) -> f64 {
-    theme::MARGIN + theme::LINE_SPACING * (theme::TITLE + lines as f64 * theme::TEXT) + theme::TEXT / 2.0
+/// The words above a picture, broken into lines.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Caption {
+    title: Vec<String>,
+    lines: Vec<String>,
 }
 
-/// Writes title and lines at the top of a sheet.
-pub fn caption(sheet: &mut Sheet, title: &str, lines: &[String]) {
-    sheet.layer("caption");
-    let width = theme::WIDTH - 2.0 * theme::MARGIN;
-    let mut y = theme::MARGIN + theme::TITLE / 2.0;
-    let title = fitted(&plain(title), theme::TITLE, width);
-    if !title.is_empty() {
-        sheet.styled(&title, [theme::MARGIN, y], Anchor::Left, theme::TITLE, theme::INK);
+/// Most lines of a title.
+const TITLE_LINES: usize = 2;
+/// Width that text may take, in mm.
+const WIDTH: f64 = theme::WIDTH - 2.0 * theme::MARGIN;
+
+/// A text in at most `most` lines of this size; what is too long is cut off.
+fn broken(text: &str, size: f64, most: usize) -> Vec<String> {
+    let mut lines: Vec<String> = Vec::new();
+    let mut rest: Vec<&str> = text.split_whitespace().collect();
+    while !rest.is_empty() {
+        let joined = |n: usize| rest[..n].join(" ");
+        if lines.len() + 1 == most {
+            lines.push(fitted(&joined(rest.len()), size, WIDTH));
+            break;
+        }
+        let fits = (1..=rest.len()).rev().find(|n| text_width(&joined(*n), size) <= WIDTH).unwrap_or(1);
+        lines.push(fitted(&joined(fits), size, WIDTH));
+        rest.drain(..fits);
     }
-    y += theme::LINE_SPACING * (theme::TITLE + theme::TEXT) / 2.0;
-    for line in lines {
-        let line = fitted(line, theme::TEXT, width);
-        sheet.styled(&line, [theme::MARGIN, y], Anchor::Left, theme::TEXT, theme::MIDDLE);
-        y += theme::LINE_SPACING * theme::TEXT;
+    lines
+}
+
+impl Caption {
+    /// A title, which is made harmless, and lines below it.
+    pub fn new(title: &str, lines: &[String]) -> Caption {
+        let lines = lines.iter().flat_map(|l| broken(l, theme::TEXT, usize::MAX)).collect();
+        Caption { title: broken(&plain(title), theme::TITLE, TITLE_LINES), lines }
+    }
+
+    /// Where the picture may begin, in mm.
+    pub fn height(&self) -> f64 {
+        let lines = self.title.len() as f64 * theme::TITLE + self.lines.len() as f64 * theme::TEXT;
+        theme::MARGIN + theme::LINE_SPACING * lines + theme::TEXT
+    }
+
+    /// A sheet with the caption on it.
+    pub fn sheet(&self, height: f64) -> Sheet {
+        let name: Vec<&str> = self.title.iter().chain(self.lines.first()).map(String::as_str).collect();
+        let mut sheet = Sheet::new(&name.join(" "), height);
+        sheet.layer("caption");
+        let mut top = theme::MARGIN;
+        for (lines, size, colour) in
+            [(&self.title, theme::TITLE, theme::INK), (&self.lines, theme::TEXT, theme::MIDDLE)]
+        {
+            for line in lines {
+                let pitch = theme::LINE_SPACING * size;
+                sheet.styled(line, [theme::MARGIN, top + pitch / 2.0], Anchor::Left, size, colour);
+                top += pitch;
+            }
+        }
+        sheet
     }
 }
 
@@ -85,5 +124,8 @@ mod tests {
     fn titles_lose_what_does_harm() {
         assert_eq!(plain("a\u{202e}b\u{200f} c\u{7}"), "ab c");
         assert_eq!(plain(&"x".repeat(10_000)).len(), LONGEST);
+        let long = Caption::new(&"word ".repeat(2000), &[]);
+        assert_eq!(long.title.len(), TITLE_LINES);
+        assert!(long.title.iter().all(|l| text_width(l, theme::TITLE) <= WIDTH));
     }
 }

@@ -2,8 +2,8 @@
 
 use tiltgap_solver::{Level, EPS0};
 
-use super::caption;
-use super::panel::{legend, Entry, Panel, Scale, Spread, BELOW, LEFT};
+use super::caption::{self, Caption};
+use super::panel::{legend, Entry, Panel, Scale, Spread, BELOW, LEFT, RIGHT};
 use super::profile::{profiles, Profile};
 use super::scene::{Scene, MM};
 use super::sheet::Sheet;
@@ -82,10 +82,11 @@ pub fn charge(scene: &Scene, level: &Level) -> Sheet {
     let ends = [lower.x_mm.clone(), upper.x_mm.clone()].concat();
     let x = [ends.iter().copied().fold(f64::INFINITY, f64::min), ends.iter().copied().fold(f64::NEG_INFINITY, f64::max)];
     let aside = ASIDE * (x[1] - x[0]);
-    let top = caption::height(text.len());
+    let caption = Caption::new(&scene.setup.bench.title, &text);
+    let top = caption.height();
     let panel = Panel {
-        corner: [LEFT + 2.0, top],
-        size: [theme::WIDTH - LEFT - 2.0 - theme::MARGIN, HEIGHT],
+        corner: [LEFT, top],
+        size: [theme::WIDTH - LEFT - RIGHT, HEIGHT],
         x: Scale::linear("x (mm)", [x[0] - aside, x[1] + aside]),
         y: Scale {
             label: format!("charge density ({})", unit.0),
@@ -96,11 +97,9 @@ pub fn charge(scene: &Scene, level: &Level) -> Sheet {
     let legend_top = top + HEIGHT + BELOW + 1.0;
     let rows = 3.0;
     let height = legend_top + rows * theme::LINE_SPACING * theme::TEXT + theme::MARGIN;
-    let mut sheet = Sheet::new(&format!("{}: {}", caption::plain(&scene.setup.bench.title), text[0]), height);
-    caption::caption(&mut sheet, &scene.setup.bench.title, &text);
+    let mut sheet = caption.sheet(height);
     sheet.layer("grid");
     panel.grid(&mut sheet);
-    sheet.layer("ideal");
     let draw = |sheet: &mut Sheet, points: &[[f64; 2]], colour, dashed: bool, width: f64| {
         let line: Vec<_> =
             points.iter().filter(|p| p[1] > 0.0).map(|p| panel.place([p[0], p[1] / unit.1])).collect();
@@ -113,22 +112,23 @@ pub fn charge(scene: &Scene, level: &Level) -> Sheet {
             }
         }
     };
-    if let (Some(first), Some(last)) = (wedge.first(), wedge.last()) {
-        draw(&mut sheet, &[[first[0], ideal], [last[0], ideal]], theme::MIDDLE, false, theme::CURVE);
-    }
-    draw(&mut sheet, &wedge, theme::THIRD, false, theme::CURVE);
     sheet.layer("charge");
     for (points, _, colour, dashed) in &curves {
         draw(&mut sheet, points, *colour, *dashed, theme::CURVE);
     }
+    sheet.layer("ideal");
+    if let (Some(first), Some(last)) = (wedge.first(), wedge.last()) {
+        draw(&mut sheet, &[[first[0], ideal], [last[0], ideal]], theme::INK, false, theme::FRAME);
+    }
+    draw(&mut sheet, &wedge, theme::THIRD, false, theme::FRAME);
     sheet.layer("axes");
     panel.axes(&mut sheet);
     sheet.layer("legend");
-    let entry = |name, colour, dashed| Entry { name, colour, dashed, width: theme::CURVE };
-    let mut entries: Vec<Entry> = curves.iter().map(|c| entry(&c.1, c.2, c.3)).collect();
+    let entry = |name, colour, dashed, width| Entry { name, colour, dashed, width };
+    let mut entries: Vec<Entry> = curves.iter().map(|c| entry(&c.1, c.2, c.3, theme::CURVE)).collect();
     if !wedge.is_empty() {
-        entries.push(entry("ideal, ε V/d", theme::MIDDLE, false));
-        entries.push(entry("wedge alone, ε V/h(x)", theme::THIRD, false));
+        entries.push(entry("ideal, ε V/d", theme::INK, false, theme::FRAME));
+        entries.push(entry("wedge alone, ε V/h(x)", theme::THIRD, false, theme::FRAME));
     }
     let width = (theme::WIDTH - 2.0 * theme::MARGIN) / 2.0;
     legend(&mut sheet, [theme::MARGIN + 2.0, legend_top], width, 2, &entries);

@@ -2,9 +2,9 @@
 
 use plotters::style::RGBColor;
 
-use super::caption;
+use super::caption::Caption;
 use super::contours::Mapped;
-use super::panel::{Panel, Scale, BELOW, LEFT};
+use super::panel::{Panel, Scale, BELOW, LEFT, RIGHT};
 use super::sheet::{text_width, Anchor, Point, Sheet};
 use super::theme;
 use super::ticks::short;
@@ -62,20 +62,19 @@ pub fn error_map(data: &ErrorMap) -> Sheet {
     assert!(data.percent.len() == rows && data.percent.iter().all(|r| r.len() == columns), "rows of other axes");
     let values = data.percent.concat();
     let most = values.iter().fold(0.0f64, |m, v| m.max(v.abs()));
-    let top = caption::height(data.lines.len());
+    let caption = Caption::new(&data.title, &data.lines);
+    let top = caption.height();
     let range = |axis: &[f64]| {
         let [a, b] = [axis.first(), axis.last()].map(|v| v.copied().unwrap_or(0.0));
         if b > a { [a, b] } else { [a - 0.5, a + 0.5] }
     };
     let panel = Panel {
-        corner: [LEFT + 2.0, top],
-        size: [theme::WIDTH - LEFT - 2.0 - theme::MARGIN - 2.0, HEIGHT],
+        corner: [LEFT, top],
+        size: [theme::WIDTH - LEFT - RIGHT, HEIGHT],
         x: Scale::linear("gap (mm)", range(&data.gaps_mm)),
         y: Scale::linear("tilt (°)", range(&data.tilts_deg)),
     };
-    let title = format!("{}: error of the ideal formula", caption::plain(&data.title));
-    let mut sheet = Sheet::new(&title, top + HEIGHT + BELOW + theme::MARGIN);
-    caption::caption(&mut sheet, &data.title, &data.lines);
+    let mut sheet = caption.sheet(top + HEIGHT + BELOW + theme::MARGIN);
     sheet.layer("error");
     let points: Vec<Point> =
         data.tilts_deg.iter().flat_map(|t| data.gaps_mm.iter().map(|g| panel.place([*g, *t]))).collect();

@@ -1,7 +1,7 @@
 //! Picture of a correction factor over the gap, a curve for every tilt, with bands of uncertainty.
 
-use super::caption;
-use super::panel::{legend, Entry, Panel, Scale, BELOW, LEFT};
+use super::caption::Caption;
+use super::panel::{legend, Entry, Panel, Scale, BELOW, LEFT, RIGHT};
 use super::sheet::Sheet;
 use super::theme;
 
@@ -57,19 +57,19 @@ pub fn factors(data: &FactorCurves) -> Sheet {
     let blank = BLANK * (high - low).max(f64::EPSILON);
     let mut lines = data.lines.clone();
     lines.push("Bands: two standard uncertainties (numerical) on either side".into());
-    let top = caption::height(lines.len());
+    let caption = Caption::new(&data.title, &lines);
+    let top = caption.height();
     let [first, last] = [gaps.first(), gaps.last()].map(|g| g.copied().unwrap_or(0.0));
     let panel = Panel {
-        corner: [LEFT + 2.0, top],
-        size: [theme::WIDTH - LEFT - 2.0 - theme::MARGIN - 2.0, HEIGHT],
+        corner: [LEFT, top],
+        size: [theme::WIDTH - LEFT - RIGHT, HEIGHT],
         x: Scale::linear("gap (mm)", [first, if last > first { last } else { first + 1.0 }]),
         y: Scale::linear(&data.factor, [low - blank, high + blank]),
     };
     let legend_top = top + HEIGHT + BELOW + 1.0;
     let rows = data.curves.len().div_ceil(COLUMNS) as f64;
     let height = legend_top + rows * theme::LINE_SPACING * theme::TEXT + theme::MARGIN;
-    let mut sheet = Sheet::new(&format!("{}: {}", caption::plain(&data.title), data.factor), height);
-    caption::caption(&mut sheet, &data.title, &lines);
+    let mut sheet = caption.sheet(height);
     sheet.layer("grid");
     panel.grid(&mut sheet);
     sheet.layer("factors");

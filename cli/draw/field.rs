@@ -3,7 +3,7 @@
 use plotters::style::RGBColor;
 use tiltgap_solver::Level;
 
-use super::caption;
+use super::caption::{self, Caption};
 use super::lines::{thinned, Tracer};
 use super::potential::{Bands, Equipotentials};
 use super::profile::{profiles, Profile};
@@ -13,17 +13,19 @@ use super::theme;
 use super::views::{self, View};
 
 /// Lines on the gap side of the upper plate, in the main view and, more densely, in the enlarged ones.
-const LINES: usize = 44;
-const LINES_ENLARGED: usize = 160;
+const LINES: usize = 88;
+const LINES_ENLARGED: usize = 220;
 /// Where a line begins: this part of a cell off the plate.
 const OFF_PLATE: f64 = 0.25;
-/// Length of an arrowhead and half its width, in mm; the shortest line that bears one.
+/// Length of an arrowhead and half its width, in mm; the shortest line that bears one; the least distance of two.
 const ARROW: [f64; 2] = [1.5, 0.5];
-const ARROW_LINE: f64 = 3.0;
+const ARROW_LINE: f64 = 5.0;
+const ARROW_DISTANCE: f64 = 3.5;
 /// Ink of the lines.
 const LINE_INK: RGBColor = theme::UPPER;
 
-/// Places (in numbers of nodes) that cut the charge of one side of a plate into parts of `part`: in the middle of each.
+/// Places that cut the charge of one side of a plate into parts of `part`, in the middle of each: in numbers of the plate's
+/// nodes from its first.
 fn seeds(profile: &Profile, side: usize, part: f64) -> Vec<f64> {
     let charge: Vec<f64> =
         profile.density[side].iter().zip(&profile.share_mm).map(|(d, s)| (d * s).abs()).collect();
@@ -41,7 +43,7 @@ fn seeds(profile: &Profile, side: usize, part: f64) -> Vec<f64> {
         let last = (charge.len() - 1) as f64;
         let (from, to) = ((n as f64 - 0.5).max(0.0), (n as f64 + 0.5).min(last));
         let t = if charge[n] > 0.0 { (target - sum) / charge[n] } else { 0.5 };
-        places.push(profile.first as f64 + from + t.clamp(0.02, 0.98) * (to - from));
+        places.push(from + t.clamp(0.02, 0.98) * (to - from));
     }
     places
 }
@@ -57,10 +59,12 @@ fn lines(scene: &Scene, plates: &[Profile; 2], part: f64, within: [[f64; 2]; 2])
         }
         for side in 0..2 {
             let k = nodes[1][side] as f64 + if side == 0 { -OFF_PLATE } else { OFF_PLATE };
-            for i in seeds(&plates[plate], side, part) {
-                let node = (i.round() as usize - plates[plate].first).min(plates[plate].x_mm.len() - 1);
-                let sign = plates[plate].density[side][node].signum();
-                let traced = tracer.trace([i, k], sign, within);
+            for place in seeds(&plates[plate], side, part) {
+                let sign = plates[plate].density[side][place.round() as usize].signum();
+                let columns = &plates[plate].columns;
+                let node = (place as usize).min(columns.len() - 2);
+                let [a, b] = [columns[node] as f64, columns[node + 1] as f64];
+                let traced = tracer.trace([a + (place - node as f64) * (b - a), k], sign, within);
                 if plate == 0 && traced.hit {
                     continue;
                 }
@@ -75,8 +79,8 @@ fn lines(scene: &Scene, plates: &[Profile; 2], part: f64, within: [[f64; 2]; 2])
     all
 }
 
-/// A line with an arrowhead in its middle.
-fn with_arrow(sheet: &mut Sheet, line: &[Point]) {
+/// A line with an arrowhead in its middle, unless another one is near.
+fn with_arrow(sheet: &mut Sheet, line: &[Point], heads: &mut Vec<Point>) {
     sheet.line(line.to_vec(), LINE_INK, theme::HAIR * 1.3);
     let step = |p: &[Point]| (p[1][0] - p[0][0]).hypot(p[1][1] - p[0][1]);
     let length: f64 = line.windows(2).map(step).sum();
@@ -92,6 +96,10 @@ fn with_arrow(sheet: &mut Sheet, line: &[Point]) {
         }
         let u = [0, 1].map(|d| (pair[1][d] - pair[0][d]) / one);
         let centre = [0, 1].map(|d| pair[0][d] + left * u[d]);
+        if heads.iter().any(|h| (h[0] - centre[0]).hypot(h[1] - centre[1]) < ARROW_DISTANCE) {
+            return;
+        }
+        heads.push(centre);
         let at = |along: f64, aside: f64| {
             [centre[0] + along * u[0] - aside * u[1], centre[1] + along * u[1] + aside * u[0]]
         };
@@ -104,16 +112,15 @@ fn with_arrow(sheet: &mut Sheet, line: &[Point]) {
 /// The picture.
 pub fn field(scene: &Scene, level: &Level) -> Sheet {
     let text = [
-        format!("Field lines {}, true to scale; fine: equipotentials", caption::place(scene.setup)),
+        format!("Field lines, equipotentials {}", caption::place(scene.setup)),
         caption::circumstances(scene.setup),
     ];
-    let (views, bottom) = views::views(scene, caption::height(text.len()));
+    let caption = Caption::new(&scene.setup.bench.title, &text);
+    let (views, bottom) = views::views(scene, caption.height());
     let plates = profiles(scene, level);
     let bands = Bands::new(scene.plates_v);
     let equipotentials = Equipotentials::new(scene, &bands);
-    let title = format!("{}: {}", caption::plain(&scene.setup.bench.title), text[0]);
-    let mut sheet = Sheet::new(&title, bottom);
-    caption::caption(&mut sheet, &scene.setup.bench.title, &text);
+    let mut sheet = caption.sheet(bottom);
     sheet.layer("equipotentials");
     equipotentials.lines(&mut sheet, &bands, &views, theme::FAINT);
     sheet.layer("field");
@@ -128,10 +135,11 @@ pub fn field(scene: &Scene, level: &Level) -> Sheet {
         }
         let all = lines(scene, &plates, on_gap / count as f64, within);
         for View { panel, .. } in chosen {
+            let mut heads = Vec::new();
             for line in &all {
                 let line: Vec<Point> = line.iter().map(|p| panel.place(*p)).collect();
                 for part in panel.clip_line(&line) {
-                    with_arrow(&mut sheet, &thinned(&part));
+                    with_arrow(&mut sheet, &thinned(&part), &mut heads);
                 }
             }
         }
@@ -150,11 +158,11 @@ mod tests {
         // Density 1 over a plate of five nodes: the nodes at the edges have half of a share.
         let share_mm = vec![0.5, 1.0, 1.0, 1.0, 0.5];
         let density = [vec![1.0; 5], vec![0.0; 5]];
-        let profile = Profile { first: 10, x_mm: vec![0.0; 5], density, share_mm };
+        let profile = Profile { columns: vec![10, 11, 12, 13, 14], x_mm: vec![0.0; 5], density, share_mm };
         let places = seeds(&profile, 0, 0.5);
         assert_eq!(places.len(), 8);
         for (n, place) in places.iter().enumerate() {
-            assert!((place - (10.25 + 0.5 * n as f64)).abs() < 1e-12, "{places:?}");
+            assert!((place - (0.25 + 0.5 * n as f64)).abs() < 1e-12, "{places:?}");
         }
         assert!(seeds(&profile, 1, 0.5).is_empty());
     }

@@ -158,12 +158,17 @@ impl Job {
         })
     }
 
+    /// A grid of the family of the bench.
+    fn grid(&self, q: usize) -> Result<Grid, Error> {
+        let arrangement = &self.setup.question.arrangement;
+        let grid = Grid::new(arrangement, q, &GridOptions::suited(arrangement));
+        Ok(grid.map_err(tiltgap_solver::Error::from)?)
+    }
+
     /// The level, started from one of half its fineness.
     fn solve(&self, line: &mut ProgressLine) -> Result<Level, Error> {
         let arrangement = &self.setup.question.arrangement;
-        let options = GridOptions::suited(arrangement);
-        let grid = |q: usize| Grid::new(arrangement, q, &options).map_err(tiltgap_solver::Error::from);
-        let nodes = grid(self.level)?.nodes();
+        let nodes = self.grid(self.level)?.nodes();
         let bytes = nodes as u64 * BYTES_PER_NODE;
         if bytes > memory_for_a_level() {
             let megabytes = bytes.div_ceil(1_000_000);
@@ -171,12 +176,12 @@ impl Job {
         }
         let mut coarse: Option<Level> = None;
         for q in [self.level / 2, self.level].into_iter().filter(|q| LEVELS.contains(q)) {
-            let nodes = grid(q)?.nodes();
+            let nodes = self.grid(q)?.nodes();
             line.show(Progress::Level { q: q as u32, nodes });
             let mut news = |iteration: usize, error: f64| {
                 line.show(Progress::Iteration { q: q as u32, iteration, error });
             };
-            let params = LevelParams::default();
+            let (params, options) = (LevelParams::default(), GridOptions::suited(arrangement));
             coarse = Some(Level::solve(arrangement, &options, q, coarse.as_ref(), &params, &mut news)?);
         }
         Ok(coarse.expect("the level asked for is in the range"))

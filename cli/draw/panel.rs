@@ -2,7 +2,7 @@
 
 use plotters::style::RGBColor;
 
-use super::sheet::{text_width, Anchor, Point, Sheet};
+use super::sheet::{on_sheet, text_width, Anchor, Point, Sheet};
 use super::theme;
 use super::ticks;
 
@@ -59,12 +59,16 @@ pub struct Panel {
 const TICK: f64 = 1.2;
 const TICK_LABEL: f64 = 0.9;
 /// Room for the axes of a panel, in mm: numbers and a label to the left, and below.
-pub const LEFT: f64 = 16.0;
+pub const LEFT: f64 = 17.5;
+/// Room to the right, for half a number.
+pub const RIGHT: f64 = 5.0;
 /// Room below.
 pub const BELOW: f64 = 12.5;
 /// Room that a number takes on the x axis, and on the y axis, in mm.
 const NUMBER_WIDTH: f64 = 12.0;
 const NUMBER_HEIGHT: f64 = 6.5;
+/// Below so many powers of ten an axis has numbers at 2 and 5 times them as well.
+const FEW_DECADES: usize = 3;
 /// Least blank between two labels, in mm.
 const LABEL_BLANK: f64 = 1.5;
 
@@ -106,6 +110,10 @@ impl Panel {
             }
             Spread::Logarithmic => {
                 let (major, minor) = ticks::decades(scale.range);
+                if major.len() < FEW_DECADES {
+                    let (shown, labels) = ticks::halves(scale.range);
+                    return (shown, labels, minor);
+                }
                 // Where decades are many, not every one gets its number.
                 let every = major.len().div_ceil(most.max(1)).max(1);
                 let shown: Vec<f64> = major.iter().copied().step_by(every).collect();
@@ -147,6 +155,7 @@ impl Panel {
             let x = self.place([*v, self.y.range[0]])[0];
             tick(sheet, [x, y1], [x, y1 + TICK]);
             let half = text_width(label, theme::TEXT) / 2.0;
+            let x = on_sheet(x, label, theme::TEXT);
             if x - half > taken {
                 sheet.text(label, [x, below], Anchor::Middle);
                 taken = x + half + LABEL_BLANK;
@@ -178,19 +187,17 @@ impl Panel {
         }
     }
 
-    /// A letter in a small white field in the upper left corner, by which the caption calls the panel.
+    /// A text in a small white field in the upper left corner.
     pub fn letter(&self, sheet: &mut Sheet, text: &str) {
         let [x, y] = self.corner;
         let width = text_width(text, theme::TEXT) + theme::TEXT;
         let height = theme::LINE_SPACING * theme::TEXT;
         let field = vec![[x, y], [x + width, y], [x + width, y + height], [x, y + height]];
-        sheet.veil(field, theme::PAPER, PATCH_OPACITY);
+        sheet.area(field, theme::PAPER);
+        sheet.frame([x, y], [x + width, y + height], theme::INK, theme::HAIR);
         sheet.text(text, [x + width / 2.0, y + height / 2.0], Anchor::Middle);
     }
 }
-
-/// Opacity of the field under a letter.
-const PATCH_OPACITY: f64 = 0.85;
 
 /// A curve to be explained: name, colour, dashed or not.
 pub struct Entry<'a> {

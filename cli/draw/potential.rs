@@ -2,11 +2,11 @@
 
 use plotters::style::RGBColor;
 
-use super::caption;
+use super::caption::{self, Caption};
 use super::contours::{Level, Mapped};
 use super::panel::{Panel, Scale};
 use super::scene::Scene;
-use super::sheet::{Anchor, Sheet};
+use super::sheet::{on_sheet, Anchor, Sheet};
 use super::theme;
 use super::ticks;
 use super::views::{self, View};
@@ -91,7 +91,7 @@ impl Equipotentials {
             for (n, colour) in up.chain(down) {
                 for area in &self.levels[n].areas {
                     let area: Vec<_> = area.iter().map(|p| panel.place(*p)).collect();
-                    sheet.area(panel.clip_area(&area), bands.colour(colour));
+                    sheet.area(super::lines::thinned(&panel.clip_area(&area)), bands.colour(colour));
                 }
             }
         }
@@ -121,7 +121,7 @@ fn colour_scale(sheet: &mut Sheet, bands: &Bands, top: f64) {
     sheet.layer("scale");
     let panel = Panel {
         corner: [super::panel::LEFT, top],
-        size: [theme::WIDTH - super::panel::LEFT - theme::MARGIN - SCALE_HEIGHT, SCALE_HEIGHT],
+        size: [theme::WIDTH - super::panel::LEFT - super::panel::RIGHT, SCALE_HEIGHT],
         x: Scale::linear("potential (V)", bands.range),
         y: Scale::linear("", [0.0, 1.0]),
     };
@@ -133,12 +133,15 @@ fn colour_scale(sheet: &mut Sheet, bands: &Bands, top: f64) {
     }
     let [[x0, y0], [x1, y1]] = panel.bounds();
     sheet.frame([x0, y0], [x1, y1], theme::INK, theme::FRAME);
-    let numbers = ticks::ticks(bands.range, BANDS / 3);
+    // The potentials of a floating pair are round up to the tolerance of the solver only.
+    let slack = 1e-4 * (bands.range[1] - bands.range[0]);
+    let range = [bands.range[0] - slack, bands.range[1] + slack];
+    let numbers = ticks::ticks(range, BANDS / 3);
     let below = y1 + theme::TEXT;
     for (value, label) in numbers.iter().zip(ticks::labels(&numbers)) {
         let x = panel.place([*value, 0.0])[0];
         sheet.line(vec![[x, y1], [x, y1 + 0.8]], theme::INK, theme::FRAME);
-        sheet.text(&label, [x, below], Anchor::Middle);
+        sheet.text(&label, [on_sheet(x, &label, theme::TEXT), below], Anchor::Middle);
     }
     let at = [(x0 + x1) / 2.0, below + theme::LINE_SPACING * theme::TEXT];
     sheet.text("potential (V)", at, Anchor::Middle);
@@ -150,12 +153,12 @@ pub fn potential(scene: &Scene) -> Sheet {
         format!("Potential {}, true to scale", caption::place(scene.setup)),
         caption::circumstances(scene.setup),
     ];
-    let (views, bottom) = views::views(scene, caption::height(lines.len()));
+    let caption = Caption::new(&scene.setup.bench.title, &lines);
+    let (views, bottom) = views::views(scene, caption.height());
     let bands = Bands::new(scene.plates_v);
     let equipotentials = Equipotentials::new(scene, &bands);
     let height = bottom + SCALE_HEIGHT + theme::TEXT * (1.5 + theme::LINE_SPACING) + theme::MARGIN;
-    let mut sheet = Sheet::new(&format!("{}: {}", caption::plain(&scene.setup.bench.title), lines[0]), height);
-    caption::caption(&mut sheet, &scene.setup.bench.title, &lines);
+    let mut sheet = caption.sheet(height);
     sheet.layer("potential");
     equipotentials.fill(&mut sheet, &bands, &views);
     sheet.layer("equipotentials");

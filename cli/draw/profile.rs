@@ -8,8 +8,8 @@ use super::scene::{Scene, MM};
 /// One plate along x, node by node, both edges included.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Profile {
-    /// Number of the plate's first node along x.
-    pub first: usize,
+    /// Numbers of the nodes along x in the scene.
+    pub columns: Vec<usize>,
     /// Where the nodes stand, in mm.
     pub x_mm: Vec<f64>,
     /// Charge density in C/m^2 on the side towards -z and on that towards +z. At the two edges, where the density has no
@@ -46,6 +46,6 @@ pub fn profiles(scene: &Scene, level: &Level) -> [Profile; 2] {
         let cell = |i: usize| if i < plate.i[1] { x[i + 1] - x[i] } else { 0.0 };
         let before = |i: usize| if i > plate.i[0] { x[i] - x[i - 1] } else { 0.0 };
         let share_mm = (plate.i[0]..=plate.i[1]).map(|i| MM * size_m * 0.5 * (cell(i) + before(i))).collect();
-        Profile { first: plate.i[0], x_mm, density, share_mm }
+        Profile { columns: scene.columns[plate.i[0]..=plate.i[1]].to_vec(), x_mm, density, share_mm }
     })
 }

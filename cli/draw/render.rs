@@ -26,8 +26,17 @@ const OVERSAMPLING: usize = 3;
 /// Height of a line over the size of the font, which the library takes for the size: ascent 0.928 and descent 0.236 of the
 /// bundled font.
 pub const FONT_SCALE: f64 = 1.164;
-/// What the SVG output of the library divides a font size by.
-const SVG_FONT_DIVISOR: f64 = 1.24;
+/// How the library has to be told the size of a font, and by how much its texts stand too high, in sizes of the font.
+#[derive(Clone, Copy)]
+struct FontFit {
+    scale: f64,
+    drop: f64,
+}
+
+/// The SVG output divides a size by this, and sets the base line half a height of an x (0.547 sizes) below the middle.
+const SVG_FONT: FontFit = FontFit { scale: 1.24, drop: 0.09 };
+/// The bitmap output sets a text with its base line 0.113 sizes below the middle; half of a digit's height is 0.365.
+const PNG_FONT: FontFit = FontFit { scale: FONT_SCALE, drop: 0.365 - 0.113 };
 
 /// Why a sheet was not rendered: always a mistake in the program.
 #[derive(Clone, Debug, PartialEq, Eq, thiserror::Error)]
@@ -43,7 +52,7 @@ fn paint<DB: DrawingBackend>(
     marks: &[Mark],
     area: &DrawingArea<DB, Shift>,
     units: f64,
-    font_scale: f64,
+    font: FontFit,
 ) -> Result<(), RenderError> {
     let place = |p: &[f64; 2]| ((p[0] * units).round() as i32, (p[1] * units).round() as i32);
     for mark in marks {
@@ -65,10 +74,12 @@ fn paint<DB: DrawingBackend>(
                     Anchor::Middle => HPos::Center,
                     Anchor::Right => HPos::Right,
                 };
-                let font = (theme::FAMILY, size * units * font_scale).into_font();
+                let drop = size * font.drop;
+                let at = if *upwards { [at[0] + drop, at[1]] } else { [at[0], at[1] + drop] };
+                let font = (theme::FAMILY, size * units * font.scale).into_font();
                 let font = if *upwards { font.transform(FontTransform::Rotate270) } else { font };
                 let style = font.color(colour).into_text_style(area).pos(Pos::new(h_pos, VPos::Center));
-                area.draw(&Text::new(text.as_str(), place(at), style)).map_err(failed)?;
+                area.draw(&Text::new(text.as_str(), place(&at), style)).map_err(failed)?;
             }
         }
     }
@@ -79,7 +90,7 @@ fn paint<DB: DrawingBackend>(
 fn svg_layer(layer: &Layer, size: (u32, u32)) -> Result<String, RenderError> {
     let mut text = String::new();
     let area = SVGBackend::with_string(&mut text, size).into_drawing_area();
-    paint(&layer.marks, &area, SVG_UNITS, SVG_FONT_DIVISOR)?;
+    paint(&layer.marks, &area, SVG_UNITS, SVG_FONT)?;
     area.present().map_err(failed)?;
     drop(area);
     let body = text.split_once(">\n").and_then(|(_, rest)| rest.rsplit_once("</svg>"));
@@ -129,7 +140,7 @@ pub fn png(sheet: &Sheet) -> Result<Vec<u8>, RenderError> {
         let backend = BitMapBackend::with_buffer(&mut raster, (fine[0] as u32, fine[1] as u32));
         let area = backend.into_drawing_area();
         for layer in &sheet.layers {
-            paint(&layer.marks, &area, pixels * OVERSAMPLING as f64, FONT_SCALE)?;
+            paint(&layer.marks, &area, pixels * OVERSAMPLING as f64, PNG_FONT)?;
         }
         area.present().map_err(failed)?;
     }

@@ -8,6 +8,11 @@ use crate::assess::Setup;
 /// Millimetres in a metre.
 pub const MM: f64 = 1e3;
 
+/// Pictures are drawn on a finer grid: cells far from the plates are so wide that their corners would show. Parts of a cell
+/// at most, and the level at which nothing shows any more.
+const MOST_PARTS: usize = 4;
+const FINE_ENOUGH: usize = 48;
+
 /// A plate in the plane of a section: its corners in mm (x, z), counted along the facing surface first, then back along the
 /// other; the two surfaces of a sheet coincide.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -39,6 +44,8 @@ pub struct Scene<'a> {
     pub outlines: [Option<Outline>; 2],
     /// Their nodes.
     pub nodes: [PlateNodes; 2],
+    /// Numbers along x of the nodes that the level itself has.
+    pub columns: Vec<usize>,
 }
 
 /// Where the plane of the pictures lies: through the middle of the overlap, or of the upper plate if there is none. In m.
@@ -80,10 +87,11 @@ impl<'a> Scene<'a> {
         let arrangement = &setup.question.arrangement;
         let size_m = arrangement.size_m();
         let y_m = plane_m(arrangement);
-        let section = Section::new(level, y_m / size_m);
+        let parts = (FINE_ENOUGH / level.grid.q).clamp(1, MOST_PARTS);
+        let (section, columns) = Section::new(level, y_m / size_m).refined(&level.grid, parts);
         let voltage = setup.question.voltage_v;
         let plates_v = setup.question.connection.potentials(level).map(|u| u * voltage);
-        let plate = |b: &NodeBox| [b.i, b.k];
+        let plate = |b: &NodeBox| [b.i.map(|i| columns[0][i]), b.k.map(|k| columns[1][k])];
         Scene {
             setup,
             y_mm: MM * y_m,
@@ -96,6 +104,7 @@ impl<'a> Scene<'a> {
                 Outline::new(&arrangement.upper, arrangement, true, y_m),
             ],
             nodes: [plate(&level.grid.lower), plate(&level.grid.upper)],
+            columns: columns[0].clone(),
         }
     }
 

@@ -178,6 +178,15 @@ pub fn fitted(text: &str, size: f64, width: f64) -> String {
     cut(fits)
 }
 
+/// Where the middle of a text may stand at most, so that all of it is on the sheet.
+pub fn on_sheet(x: f64, text: &str, size: f64) -> f64 {
+    let half = text_width(text, size) / 2.0;
+    x.clamp(half + BORDER, theme::WIDTH - half - BORDER)
+}
+
+/// Blank that stays at the sides of a sheet, in mm.
+const BORDER: f64 = 1.0;
+
 /// A line cut into dashes.
 fn dashes(points: &[Point]) -> Vec<Vec<Point>> {
     let mut all = Vec::new();

@@ -65,6 +65,21 @@ pub fn decades([from, to]: [f64; 2]) -> (Vec<f64>, Vec<f64>) {
     (major, minor)
 }
 
+/// 1, 2 and 5 times the powers of ten in a range, and how they are written.
+pub fn halves([from, to]: [f64; 2]) -> (Vec<f64>, Vec<String>) {
+    let powers = from.log10().floor() as i32..=to.log10().ceil() as i32;
+    let all = powers.flat_map(|n| ROUND[..3].iter().map(move |m| (*m, n)));
+    all.filter_map(|(m, n)| {
+        let value = m * 10f64.powi(n);
+        let inside = value >= from * (1.0 - SLACK) && value <= to * (1.0 + SLACK);
+        let power = power_label(10f64.powi(n));
+        let plain = !power.starts_with("10") || n == 1;
+        let text = if plain { short(value, 1) } else { format!("{m}·{power}") };
+        inside.then_some((value, text))
+    })
+    .unzip()
+}
+
 /// A power of ten as it is written on an axis: 0.01, 1, 10², 10⁶.
 pub fn power_label(value: f64) -> String {
     const PLAIN: std::ops::RangeInclusive<i32> = -2..=3;

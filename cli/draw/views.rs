@@ -1,6 +1,6 @@
 //! The views of a cross-section: all of it true to scale, and the narrow and the wide edge of the gap enlarged.
 
-use super::panel::{Panel, Scale, BELOW, LEFT};
+use super::panel::{Panel, Scale, BELOW, LEFT, RIGHT};
 use super::scene::{Outline, Scene};
 use super::sheet::{Anchor, Point, Sheet};
 use super::theme;
@@ -16,6 +16,10 @@ const ENLARGED: f64 = 36.0;
 const GAPS_SHOWN: f64 = 3.2;
 /// Weakest and strongest enlargement worth a view.
 const ENLARGEMENT: [f64; 2] = [1.7, 500.0];
+
+/// A frame on a fill has a light rim this many times as wide; opacity of the field under a letter.
+const HALO: f64 = 3.0;
+const PATCH_OPACITY: f64 = 0.8;
 
 /// One view.
 #[derive(Clone, Debug, PartialEq)]
@@ -65,7 +69,7 @@ pub fn views(scene: &Scene, top: f64) -> (Vec<View>, f64) {
     let arrangement = &scene.setup.question.arrangement;
     let length = super::scene::MM * arrangement.lower.length_m.max(arrangement.upper.length_m);
     let around = AROUND_LENGTHS * length + AROUND_GAPS * super::scene::MM * arrangement.pose.gap_m;
-    let width = theme::WIDTH - LEFT - theme::MARGIN;
+    let width = theme::WIDTH - LEFT - RIGHT;
     let real = [x, z].map(|r| r[1] - r[0] + 2.0 * around);
     let scale = (width / real[0]).min(TALLEST / real[1]);
     // A tall view takes the whole width all the same and shows more of the outside.
@@ -75,21 +79,24 @@ pub fn views(scene: &Scene, top: f64) -> (Vec<View>, f64) {
     let mut all = vec![View { panel: main, detail: None }];
     let mut bottom = top + size[1] + BELOW;
     let Some(ends) = ends(scene) else { return (all, bottom) };
-    let width = (theme::WIDTH - 2.0 * (LEFT + theme::MARGIN)) / 2.0;
-    let mut x = LEFT;
     // From left to right as in the main view.
     let mut in_order = ends;
     in_order.sort_by(|a, b| a[0].total_cmp(&b[0]));
-    for ([at, gap], letter) in in_order.into_iter().zip(["a", "b"]) {
-        let times = ENLARGED / (GAPS_SHOWN * gap * scale);
-        if !(ENLARGEMENT[0]..=ENLARGEMENT[1]).contains(&times) {
-            continue;
-        }
+    let times = |gap: f64| ENLARGED / (GAPS_SHOWN * gap * scale);
+    let worth: Vec<[f64; 2]> = in_order
+        .into_iter()
+        .filter(|[_, gap]| (ENLARGEMENT[0]..=ENLARGEMENT[1]).contains(&times(*gap)))
+        .collect();
+    // Side by side, or one across the whole width.
+    let width = theme::WIDTH / worth.len().max(1) as f64 - (LEFT + RIGHT);
+    let mut x = LEFT;
+    for (&[at, gap], letter) in worth.iter().zip(["a", "b"]) {
+        let times = times(gap);
         let z = gap_base(scene, at) + gap / 2.0;
         let corner = [x, bottom];
         let panel = view(corner, [width, ENLARGED], [at, z], scale * times, ["x (mm)", "z (mm)"]);
         all.push(View { panel, detail: Some(Detail { letter, times }) });
-        x += width + LEFT + theme::MARGIN;
+        x += width + LEFT + RIGHT;
     }
     if all.len() > 1 {
         bottom += ENLARGED + BELOW;
@@ -130,15 +137,20 @@ pub fn frames(sheet: &mut Sheet, views: &[View]) {
         let Some(detail) = &view.detail else { continue };
         let (x, y) = (view.panel.x.range, view.panel.y.range);
         let [upper, lower] = [main.place([x[0], y[1]]), main.place([x[1], y[0]])];
+        sheet.frame(upper, lower, theme::PAPER, HALO * theme::FRAME);
         sheet.frame(upper, lower, theme::INK, theme::FRAME);
-        let above = [(upper[0] + lower[0]) / 2.0, upper[1] - theme::TEXT * 0.8];
+        // Inside the main view, on the side towards its middle where there is room above.
+        let above = [(upper[0] + lower[0]) / 2.0, upper[1] - theme::TEXT];
+        let half = theme::TEXT * 0.6;
+        let [left, right, top, bottom] = [above[0] - half, above[0] + half, above[1] - half, above[1] + half];
+        sheet.veil(vec![[left, top], [right, top], [right, bottom], [left, bottom]], theme::PAPER, PATCH_OPACITY);
         sheet.text(detail.letter, above, Anchor::Middle);
     }
     sheet.layer("axes");
     for view in views {
         view.panel.axes(sheet);
         if let Some(Detail { letter, times }) = &view.detail {
-            view.panel.letter(sheet, &format!("{letter}  ×{}", short(*times, 2)));
+            view.panel.letter(sheet, &format!("{letter} (×{})", short(*times, 2)));
         }
     }
 }

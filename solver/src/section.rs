@@ -3,6 +3,9 @@
 //! Along y the nodes of a column are interpolated linearly, positions and potentials alike, so that the points lie
 //! exactly in the plane and the plates, which are flat, exactly where they are.
 
+use rayon::prelude::*;
+use tiltgap_meshes::{Grid, Stencil};
+
 use crate::level::Level;
 
 /// A field on the nodes of a plane; lengths in units of the arrangement's size.
@@ -45,6 +48,42 @@ impl Section {
             }
         }
         section
+    }
+
+    /// The same on a grid whose cells are cut into `parts` along x and z, by cubic interpolation: for pictures, where the
+    /// corners of wide cells would show. `grid` is that of the section. Also returned: the new numbers of the old nodes
+    /// along x and along z.
+    ///
+    /// # Panics
+    /// If `grid` is another grid.
+    pub fn refined(&self, grid: &Grid, parts: usize) -> (Section, [Vec<usize>; 2]) {
+        let [sx, sz] = [0, 2].map(|d| grid.axes[d].subdivided(parts));
+        assert_eq!(self.shape, [grid.axes[0].len(), grid.axes[2].len()], "a section of another grid");
+        let old = |stencils: &[Stencil]| (0..stencils.len()).filter(|&n| stencils[n].count == 1).collect();
+        let row = |i: usize| -> Vec<[f64; 4]> {
+            let node = |k: usize| {
+                let mut sum = [0.0; 4];
+                for (m, u) in sx[i].weights[..sx[i].count].iter().enumerate() {
+                    for (n, v) in sz[k].weights[..sz[k].count].iter().enumerate() {
+                        let at = self.index(sx[i].first + m, sz[k].first + n);
+                        let ([x, z], [a, b]) = (self.points[at], self.phi[at]);
+                        for (sum, value) in sum.iter_mut().zip([x, z, a, b]) {
+                            *sum += u * v * value;
+                        }
+                    }
+                }
+                sum
+            };
+            (0..sz.len()).map(node).collect()
+        };
+        let rows: Vec<[f64; 4]> = (0..sx.len()).into_par_iter().flat_map_iter(row).collect();
+        let section = Section {
+            y: self.y,
+            shape: [sx.len(), sz.len()],
+            points: rows.iter().map(|r| [r[0], r[1]]).collect(),
+            phi: rows.iter().map(|r| [r[2], r[3]]).collect(),
+        };
+        (section, [old(&sx), old(&sz)])
     }
 
     /// Number of a node.
