@@ -5,6 +5,7 @@ mod cli;
 mod convergence;
 mod coverage;
 mod discrete;
+mod draw;
 mod ideal_limit;
 mod operator;
 mod plates;

@@ -16,9 +16,7 @@ const LONGEST: usize = 200;
 
 /// A text without what has no width or turns the reading direction round: it would do harm to what stands beside it.
 pub fn plain(text: &str) -> String {
-    let turns = |c: &char| {
-        matches!(c, '\u{200b}'..='\u{200f}' | '\u{202a}'..='\u{202e}' | '\u{2060}'..='\u{206f}' | '\u{feff}' | '\u{61c}')
-    };
+    let turns = |c: &char| matches!(c, '\u{200b}'..='\u{200f}' | '\u{202a}'..='\u{202e}' | '\u{2060}'..='\u{206f}' | '\u{feff}' | '\u{61c}');
     let printable = |c: &char| !c.is_control() && !matches!(c, '\u{fffe}' | '\u{ffff}') && !turns(c);
     text.chars().filter(printable).take(LONGEST).collect::<String>().trim().into()
 }
@@ -50,7 +48,11 @@ pub fn place(setup: &Setup) -> String {
         tiltgap_meshes::Dimensions::Two => "in cross-section, wide plates".into(),
         tiltgap_meshes::Dimensions::Three => {
             let y = short(MM * plane_m(arrangement), DIGITS);
-            if y == "0" { "in the plane y = 0".into() } else { format!("in the plane y = {y} mm") }
+            if y == "0" {
+                "in the plane y = 0".into()
+            } else {
+                format!("in the plane y = {y} mm")
+            }
         }
     }
 }

@@ -62,12 +62,13 @@ fn sign(profile: &Profile, side: usize) -> &'static str {
 /// The picture.
 pub fn charge(scene: &Scene, level: &Level) -> Sheet {
     let text = [
-        format!("Charge density {} (without its sign)", caption::place(scene.setup)),
+        format!("Magnitude of the charge density {}", caption::place(scene.setup)),
         caption::circumstances(scene.setup),
     ];
     let question = &scene.setup.question;
     let [lower, upper] = profiles(scene, level);
-    let ideal = EPS0 * question.relative_permittivity * question.voltage_v.abs() / question.arrangement.pose.gap_m;
+    let ideal =
+        EPS0 * question.relative_permittivity * question.voltage_v.abs() / question.arrangement.pose.gap_m;
     let wedge = wedge(scene);
     let most = wedge.iter().map(|p| p[1]).fold(ideal, f64::max);
     let curves = [
@@ -80,7 +81,10 @@ pub fn charge(scene: &Scene, level: &Level) -> Sheet {
     let least = shown.fold(ideal, f64::min).max(BELOW_IDEAL * ideal);
     let unit = UNITS.iter().find(|u| ideal >= LEAST_OF_A_UNIT * u.1).unwrap_or(&UNITS[UNITS.len() - 1]);
     let ends = [lower.x_mm.clone(), upper.x_mm.clone()].concat();
-    let x = [ends.iter().copied().fold(f64::INFINITY, f64::min), ends.iter().copied().fold(f64::NEG_INFINITY, f64::max)];
+    let x = [
+        ends.iter().copied().fold(f64::INFINITY, f64::min),
+        ends.iter().copied().fold(f64::NEG_INFINITY, f64::max),
+    ];
     let aside = ASIDE * (x[1] - x[0]);
     let caption = Caption::new(&scene.setup.bench.title, &text);
     let top = caption.height();

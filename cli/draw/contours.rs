@@ -36,7 +36,11 @@ impl Mapped<'_> {
     /// If values or points do not fill the grid.
     pub fn levels(&self, levels: &[f64]) -> Vec<Level> {
         let nodes = self.columns * self.rows;
-        assert_eq!((self.values.len(), self.points.len()), (nodes, nodes), "values and points of other grids");
+        assert_eq!(
+            (self.values.len(), self.points.len()),
+            (nodes, nodes),
+            "values and points of other grids"
+        );
         let found = ContourBuilder::new(self.columns, self.rows, true).contours(self.values, levels);
         let found = found.expect("the values fill the grid");
         found
@@ -72,7 +76,8 @@ impl Mapped<'_> {
         let cell = [u, v].map(f64::floor);
         let [m, n] = [0, 1].map(|d| cell[d].min((ends[d] - 1.0).max(0.0)) as usize);
         let (s, t) = (u - m as f64, v - n as f64);
-        let node = |m: usize, n: usize| self.points[n.min(self.rows - 1) * self.columns + m.min(self.columns - 1)];
+        let node =
+            |m: usize, n: usize| self.points[n.min(self.rows - 1) * self.columns + m.min(self.columns - 1)];
         let (a, b, c, d) = (node(m, n), node(m + 1, n), node(m, n + 1), node(m + 1, n + 1));
         [0, 1].map(|e| (1.0 - t) * ((1.0 - s) * a[e] + s * b[e]) + t * ((1.0 - s) * c[e] + s * d[e]))
     }

@@ -38,7 +38,8 @@ pub struct ErrorMap {
 
 /// Contours inside the range of the values, ascending.
 fn levels(values: &[f64]) -> Vec<f64> {
-    let (low, high) = values.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), v| (l.min(*v), h.max(*v)));
+    let (low, high) =
+        values.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), v| (l.min(*v), h.max(*v)));
     let mut all: Vec<f64> = LEVELS.iter().flat_map(|l| [-l, *l]).chain([0.0]).collect();
     all.retain(|l| *l > low && *l < high);
     all.sort_by(f64::total_cmp);
@@ -59,14 +60,21 @@ fn colour(percent: f64, most: f64) -> RGBColor {
 /// If the rows do not fit the axes.
 pub fn error_map(data: &ErrorMap) -> Sheet {
     let (columns, rows) = (data.gaps_mm.len(), data.tilts_deg.len());
-    assert!(data.percent.len() == rows && data.percent.iter().all(|r| r.len() == columns), "rows of other axes");
+    assert!(
+        data.percent.len() == rows && data.percent.iter().all(|r| r.len() == columns),
+        "rows of other axes"
+    );
     let values = data.percent.concat();
     let most = values.iter().fold(0.0f64, |m, v| m.max(v.abs()));
     let caption = Caption::new(&data.title, &data.lines);
     let top = caption.height();
     let range = |axis: &[f64]| {
         let [a, b] = [axis.first(), axis.last()].map(|v| v.copied().unwrap_or(0.0));
-        if b > a { [a, b] } else { [a - 0.5, a + 0.5] }
+        if b > a {
+            [a, b]
+        } else {
+            [a - 0.5, a + 0.5]
+        }
     };
     let panel = Panel {
         corner: [LEFT, top],
@@ -122,7 +130,8 @@ fn label(sheet: &mut Sheet, line: &[Point], text: &str, panel: &Panel, taken: &m
     let room = |p: &Point| {
         let inside = (0..2).all(|d| p[d] - half[d] > low[d] + 1.0 && p[d] + half[d] < high[d] - 1.0);
         let apart = |q: &Point| {
-            (p[0] - q[0]).abs() > 2.0 * half[0] + theme::TEXT || (p[1] - q[1]).abs() > LABEL_DISTANCE * theme::TEXT
+            (p[0] - q[0]).abs() > 2.0 * half[0] + theme::TEXT
+                || (p[1] - q[1]).abs() > LABEL_DISTANCE * theme::TEXT
         };
         inside && taken.iter().all(apart)
     };
@@ -156,12 +165,12 @@ fn along(line: &[Point]) -> Vec<Point> {
 }
 
 #[cfg(test)]
-pub mod tests {
+mod tests {
     use super::*;
     use crate::draw::{render, sheet::Mark};
 
     /// An error that changes its sign: wedge against fringe, with invented weights.
-    pub fn synthetic() -> ErrorMap {
+    fn synthetic() -> ErrorMap {
         let gaps_mm: Vec<f64> = (0..13).map(|n| 2.0 + 0.5 * n as f64).collect();
         let tilts_deg: Vec<f64> = (0..9).map(|n| -1.0 + 0.25 * n as f64).collect();
         let at = |tilt: f64, gap: f64| {
@@ -183,8 +192,10 @@ pub mod tests {
         let data = synthetic();
         let sheet = error_map(&data);
         let layer = |name: &str| &sheet.layers.iter().find(|l| l.name == name).unwrap().marks;
-        let stressed: Vec<&Mark> =
-            layer("contours").iter().filter(|m| matches!(m, Mark::Line { width, .. } if *width == STRESSED_WIDTH)).collect();
+        let stressed: Vec<&Mark> = layer("contours")
+            .iter()
+            .filter(|m| matches!(m, Mark::Line { width, .. } if *width == STRESSED_WIDTH))
+            .collect();
         assert!(!stressed.is_empty());
         let texts: Vec<&str> = layer("labels")
             .iter()

@@ -49,10 +49,16 @@ pub struct FactorCurves {
 pub fn factors(data: &FactorCurves) -> Sheet {
     let gaps = &data.gaps_mm;
     for curve in &data.curves {
-        assert_eq!((curve.values.len(), curve.uncertainties.len()), (gaps.len(), gaps.len()), "{}", curve.name);
+        assert_eq!(
+            (curve.values.len(), curve.uncertainties.len()),
+            (gaps.len(), gaps.len()),
+            "{}",
+            curve.name
+        );
     }
     let band = |c: &Curve, n: usize, sign: f64| c.values[n] + sign * COVERAGE * c.uncertainties[n];
-    let ends = data.curves.iter().flat_map(|c| (0..gaps.len()).flat_map(|n| [band(c, n, -1.0), band(c, n, 1.0)]));
+    let ends =
+        data.curves.iter().flat_map(|c| (0..gaps.len()).flat_map(|n| [band(c, n, -1.0), band(c, n, 1.0)]));
     let (low, high) = ends.fold((1.0f64, 1.0f64), |(l, h), v| (l.min(v), h.max(v)));
     let blank = BLANK * (high - low).max(f64::EPSILON);
     let mut lines = data.lines.clone();
@@ -103,12 +109,12 @@ pub fn factors(data: &FactorCurves) -> Sheet {
 }
 
 #[cfg(test)]
-pub mod tests {
+mod tests {
     use super::*;
     use crate::draw::{render, sheet::Mark};
 
     /// Curves from the leading terms, with invented uncertainties.
-    pub fn synthetic() -> FactorCurves {
+    fn synthetic() -> FactorCurves {
         let gaps_mm: Vec<f64> = (0..25).map(|n| 2.0 + 0.25 * n as f64).collect();
         let curve = |tilt: f64| {
             let beta = |g: f64| 55.0 * tilt.to_radians().tan() / g;

@@ -144,8 +144,9 @@ pub fn field(scene: &Scene, level: &Level) -> Sheet {
             }
         }
     }
+    views::places(&mut sheet, &views);
     views::plates(&mut sheet, scene, &views);
-    views::frames(&mut sheet, &views);
+    views::axes(&mut sheet, &views);
     sheet
 }
 

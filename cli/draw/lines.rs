@@ -43,7 +43,8 @@ impl<'a> Tracer<'a> {
         let node = [[0, 0], [1, 0], [0, 1], [1, 1]].map(|[a, b]| self.scene.index(i + a, k + b));
         let weights = [(1.0 - u) * (1.0 - v), u * (1.0 - v), (1.0 - u) * v, u * v];
         let slopes = [[v - 1.0, 1.0 - v, -v, v], [u - 1.0, -u, 1.0 - u, u]];
-        let sum = |w: &[f64; 4], of: &dyn Fn(usize) -> f64| -> f64 { (0..4).map(|n| w[n] * of(node[n])).sum() };
+        let sum =
+            |w: &[f64; 4], of: &dyn Fn(usize) -> f64| -> f64 { (0..4).map(|n| w[n] * of(node[n])).sum() };
         let x = |n: usize| self.scene.points[n][0];
         let z = |n: usize| self.scene.points[n][1];
         let phi = |n: usize| self.scene.potential[n];

@@ -163,8 +163,9 @@ pub fn potential(scene: &Scene) -> Sheet {
     equipotentials.fill(&mut sheet, &bands, &views);
     sheet.layer("equipotentials");
     equipotentials.lines(&mut sheet, &bands, &views, theme::MIDDLE);
+    views::places(&mut sheet, &views);
     views::plates(&mut sheet, scene, &views);
-    views::frames(&mut sheet, &views);
+    views::axes(&mut sheet, &views);
     colour_scale(&mut sheet, &bands, bottom);
     sheet
 }

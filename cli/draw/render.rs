@@ -167,7 +167,9 @@ pub fn png(sheet: &Sheet) -> Result<Vec<u8>, RenderError> {
         yppu: per_metre,
         unit: png::Unit::Meter,
     }));
-    encoder.add_text_chunk("Software".into(), concat!("tiltgap ", env!("CARGO_PKG_VERSION")).into()).map_err(failed)?;
+    encoder
+        .add_text_chunk("Software".into(), concat!("tiltgap ", env!("CARGO_PKG_VERSION")).into())
+        .map_err(failed)?;
     let mut writer = encoder.write_header().map_err(failed)?;
     writer.write_image_data(&image).map_err(failed)?;
     writer.finish().map_err(failed)?;

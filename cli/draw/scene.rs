@@ -66,7 +66,9 @@ impl Outline {
         let outside = if upper { plate.thickness_m } else { -plate.thickness_m };
         let half = plate.length_m / 2.0;
         let mut corners = [[0.0; 2]; 4];
-        for (n, (px, pz)) in [(-half, 0.0), (half, 0.0), (half, outside), (-half, outside)].into_iter().enumerate() {
+        for (n, (px, pz)) in
+            [(-half, 0.0), (half, 0.0), (half, outside), (-half, outside)].into_iter().enumerate()
+        {
             // The point of the edge that lies in the plane.
             let py = (y_m - c[1] - r[1][0] * px - r[1][2] * pz) / r[1][1];
             if arrangement.dimensions == Dimensions::Three && py.abs() > plate.width_m / 2.0 {

@@ -42,7 +42,11 @@ pub fn labels(numbers: &[f64]) -> Vec<String> {
 pub fn number(value: f64, decimals: usize) -> String {
     let text = format!("{value:.decimals$}");
     let zero = text.bytes().all(|b| !(b'1'..=b'9').contains(&b));
-    if zero { text.trim_start_matches('-').into() } else { text.replace('-', "−") }
+    if zero {
+        text.trim_start_matches('-').into()
+    } else {
+        text.replace('-', "−")
+    }
 }
 
 /// A number with at most `digits` significant digits, without zeros at the end.
@@ -53,7 +57,11 @@ pub fn short(value: f64, digits: usize) -> String {
     let exponent = value.abs().log10().floor() as i32;
     let decimals = (digits as i32 - 1 - exponent).max(0) as usize;
     let text = number(value, decimals);
-    if text.contains('.') { text.trim_end_matches('0').trim_end_matches('.').into() } else { text }
+    if text.contains('.') {
+        text.trim_end_matches('0').trim_end_matches('.').into()
+    } else {
+        text
+    }
 }
 
 /// Powers of ten in a range of positive numbers, and the multiples 2 to 9 of them.
@@ -61,7 +69,8 @@ pub fn decades([from, to]: [f64; 2]) -> (Vec<f64>, Vec<f64>) {
     let inside = |v: &f64| *v >= from * (1.0 - SLACK) && *v <= to * (1.0 + SLACK);
     let powers: Vec<i32> = (from.log10().floor() as i32..=to.log10().ceil() as i32).collect();
     let major = powers.iter().map(|n| 10f64.powi(*n)).filter(inside).collect();
-    let minor = powers.iter().flat_map(|n| (2..10).map(|m| m as f64 * 10f64.powi(*n))).filter(inside).collect();
+    let minor =
+        powers.iter().flat_map(|n| (2..10).map(|m| m as f64 * 10f64.powi(*n))).filter(inside).collect();
     (major, minor)
 }
 
@@ -109,7 +118,10 @@ mod tests {
         for length in [1e-9, 0.37, 12.0, 4e7] {
             for most in [3, 7, 20] {
                 let parts = length / round_step(length, most);
-                assert!(parts <= most as f64 * (1.0 + 1e-8) && parts > most as f64 / 2.6, "{length} {most} {parts}");
+                assert!(
+                    parts <= most as f64 * (1.0 + 1e-8) && parts > most as f64 / 2.6,
+                    "{length} {most} {parts}"
+                );
             }
         }
     }

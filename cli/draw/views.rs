@@ -92,7 +92,8 @@ pub fn views(scene: &Scene, top: f64) -> (Vec<View>, f64) {
     let mut x = LEFT;
     for (&[at, gap], letter) in worth.iter().zip(["a", "b"]) {
         let times = times(gap);
-        let z = gap_base(scene, at) + gap / 2.0;
+        // The lower plate's facing surface is the plane z = 0.
+        let z = gap / 2.0;
         let corner = [x, bottom];
         let panel = view(corner, [width, ENLARGED], [at, z], scale * times, ["x (mm)", "z (mm)"]);
         all.push(View { panel, detail: Some(Detail { letter, times }) });
@@ -102,11 +103,6 @@ pub fn views(scene: &Scene, top: f64) -> (Vec<View>, f64) {
         bottom += ENLARGED + BELOW;
     }
     (all, bottom)
-}
-
-/// Height of the lower plate's facing surface at `x`, in mm.
-fn gap_base(scene: &Scene, _x: f64) -> f64 {
-    scene.outlines[0].map_or(0.0, |o| o.corners[0][1])
 }
 
 /// The plates in every view: as thick as they are, a sheet as a stroke on its far side, so that the gap keeps its width.
@@ -129,8 +125,8 @@ pub fn plates(sheet: &mut Sheet, scene: &Scene, views: &[View]) {
     }
 }
 
-/// Places of the enlarged views in the main one, axes, letters.
-pub fn frames(sheet: &mut Sheet, views: &[View]) {
+/// Places of the enlarged views in the main one; drawn before the plates, which the light rims would cut.
+pub fn places(sheet: &mut Sheet, views: &[View]) {
     sheet.layer("places");
     let main = &views[0].panel;
     for view in &views[1..] {
@@ -139,13 +135,20 @@ pub fn frames(sheet: &mut Sheet, views: &[View]) {
         let [upper, lower] = [main.place([x[0], y[1]]), main.place([x[1], y[0]])];
         sheet.frame(upper, lower, theme::PAPER, HALO * theme::FRAME);
         sheet.frame(upper, lower, theme::INK, theme::FRAME);
-        // Inside the main view, on the side towards its middle where there is room above.
         let above = [(upper[0] + lower[0]) / 2.0, upper[1] - theme::TEXT];
         let half = theme::TEXT * 0.6;
         let [left, right, top, bottom] = [above[0] - half, above[0] + half, above[1] - half, above[1] + half];
-        sheet.veil(vec![[left, top], [right, top], [right, bottom], [left, bottom]], theme::PAPER, PATCH_OPACITY);
+        sheet.veil(
+            vec![[left, top], [right, top], [right, bottom], [left, bottom]],
+            theme::PAPER,
+            PATCH_OPACITY,
+        );
         sheet.text(detail.letter, above, Anchor::Middle);
     }
+}
+
+/// Axes and letters of all views.
+pub fn axes(sheet: &mut Sheet, views: &[View]) {
     sheet.layer("axes");
     for view in views {
         view.panel.axes(sheet);

@@ -103,9 +103,17 @@ pub fn vts(setup: &Setup, level: &Level) -> Result<Vec<u8>, Error> {
     let extent = format!("0 {nx} 0 {ny} 0 {nz}");
     // A comment of XML must not hold two hyphens.
     let title = escaped(&caption::plain(&setup.bench.title)).replace('-', "‐");
-    let mut text = format!("<?xml version=\"1.0\" encoding=\"UTF-8\"?>\n<!-- tiltgap {}: {title}; ", env!("CARGO_PKG_VERSION"));
-    writeln!(text, "{}; level {}; metres, V, V/m -->", caption::circumstances(setup).replace('-', "‐"), level.grid.q)
-        .map_err(std::io::Error::other)?;
+    let mut text = format!(
+        "<?xml version=\"1.0\" encoding=\"UTF-8\"?>\n<!-- tiltgap {}: {title}; ",
+        env!("CARGO_PKG_VERSION")
+    );
+    writeln!(
+        text,
+        "{}; level {}; metres, V, V/m -->",
+        caption::circumstances(setup).replace('-', "‐"),
+        level.grid.q
+    )
+    .map_err(std::io::Error::other)?;
     text.push_str(
         "<VTKFile type=\"StructuredGrid\" version=\"1.0\" byte_order=\"LittleEndian\" header_type=\"UInt64\" \
          compressor=\"vtkZLibDataCompressor\">\n",
