@@ -41,6 +41,9 @@ use scene::Scene;
 const LEVEL_IN_THE_PLANE: usize = 12;
 const LEVEL_IN_SPACE: usize = 6;
 const LEVEL_OF_A_FILE: usize = 4;
+/// Tolerance of the solver. The charge of a node is of first order in what the iteration leaves, as are the potentials of a
+/// floating pair: at the usual 1e-8 they are off by some 1e-5.
+const TOLERANCE: f64 = 1e-10;
 /// Levels that can be asked for.
 const LEVELS: std::ops::RangeInclusive<usize> = 2..=32;
 
@@ -181,7 +184,9 @@ impl Job {
             let mut news = |iteration: usize, error: f64| {
                 line.show(Progress::Iteration { q: q as u32, iteration, error });
             };
-            let (params, options) = (LevelParams::default(), GridOptions::suited(arrangement));
+            let mut params = LevelParams::default();
+            params.outer.tolerance = TOLERANCE;
+            let options = GridOptions::suited(arrangement);
             coarse = Some(Level::solve(arrangement, &options, q, coarse.as_ref(), &params, &mut news)?);
         }
         Ok(coarse.expect("the level asked for is in the range"))

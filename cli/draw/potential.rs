@@ -15,6 +15,8 @@ use super::views::{self, View};
 const BANDS: usize = 20;
 /// In the main view every so many bands has a line, so that the gap is not full of them.
 const COARSE: usize = 5;
+/// What is nearer to a plate's potential than this part of a band is that of the plate.
+const OF_A_PLATE: f64 = 1e-3;
 /// Height of the colour scale, in mm, and room for its numbers.
 const SCALE_HEIGHT: f64 = 3.5;
 
@@ -34,7 +36,7 @@ impl Bands {
         let mut range = plates_v;
         range.sort_by(f64::total_cmp);
         let step = ticks::round_step(range[1] - range[0], BANDS);
-        let slack = 1e-6 * step;
+        let slack = OF_A_PLATE * step;
         let inside = |v: &f64| *v > range[0] + slack && *v < range[1] - slack;
         let levels = ticks::multiples(range, step).into_iter().filter(inside).collect();
         Bands { levels, step, range }
