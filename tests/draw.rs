@@ -10,6 +10,7 @@ use roxmltree::Document;
 use serde_json::{json, Value};
 use tiltgap::arguments::BenchArguments;
 use tiltgap::assess::Setup;
+use tiltgap::draw::lines::Tracer;
 use tiltgap::draw::potential::{Bands, Equipotentials};
 use tiltgap::draw::profile::profiles;
 use tiltgap::draw::scene::Scene;
@@ -124,6 +125,15 @@ fn inside_a_wedge_equipotentials_and_charge_are_those_of_hinged_planes() {
             }
         }
         assert!(seen > 100, "{seen}");
+        // A field line is an arc about the hinge, from one plate to the other.
+        let [i, k] = scene.nodes[0];
+        let start = [(i[0] + i[1]) as f64 / 2.0 + 0.3, k[1] as f64 + 0.25];
+        let line = Tracer::new(&scene).trace(start, -1.0, [[-100.0, 100.0]; 2]);
+        assert!(line.hit && line.points.len() > 100 && line.points.len() < 2000);
+        let radius = |p: &[f64; 2]| (p[0] + hinge_mm).hypot(p[1]);
+        let (first, last) = (line.points[0], line.points[line.points.len() - 1]);
+        assert!(line.points.iter().all(|p| (radius(p) - radius(&first)).abs() < 1e-3));
+        assert!((last[1] - tilt.tan() * (last[0] + hinge_mm)).abs() < 1e-9, "{last:?}");
         let eps_v = EPS0 * setup.question.relative_permittivity * setup.question.voltage_v;
         let [lower, upper] = profiles(&scene, &level);
         for (profile, side, sign, cosine) in [(lower, 1, -1.0, 1.0), (upper, 0, 1.0, tilt.cos())] {

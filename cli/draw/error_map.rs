@@ -10,7 +10,7 @@ use super::theme;
 use super::ticks::short;
 
 /// Contours in per cent, on both sides of zero: steps of about two, as errors are thought of.
-const LEVELS: [f64; 9] = [0.2, 0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 50.0, 100.0];
+const LEVELS: [f64; 8] = [0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 50.0, 100.0];
 /// The contour that is stressed.
 const STRESSED: f64 = 1.0;
 const STRESSED_WIDTH: f64 = 0.8;
@@ -21,7 +21,7 @@ const STRONGEST: f64 = 0.8;
 /// Least distance between labels and from the frame, in text heights.
 const LABEL_DISTANCE: f64 = 2.2;
 
-/// What is drawn.
+/// What is drawn. Contours are straight between the points of the map: give as fine a map as the table interpolates.
 #[derive(Clone, Debug, PartialEq)]
 pub struct ErrorMap {
     /// Title of the bench.
@@ -90,9 +90,10 @@ pub fn error_map(data: &ErrorMap) -> Sheet {
     let contours = Mapped { columns, rows, values: &values, points: &points }.levels(&levels);
     // The band between two contours has the colour of its end that is farther from zero.
     let lowest = values.iter().copied().fold(f64::INFINITY, f64::min);
+    let highest = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
     let band = |n: usize| {
         let low = if n == 0 { lowest } else { levels[n - 1] };
-        let high = levels.get(n).copied().unwrap_or(most);
+        let high = levels.get(n).copied().unwrap_or(highest);
         colour(if low.abs() > high.abs() { low } else { high }, most)
     };
     let [[x0, y0], [x1, y1]] = panel.bounds();
@@ -113,9 +114,13 @@ pub fn error_map(data: &ErrorMap) -> Sheet {
     }
     sheet.layer("labels");
     let mut taken: Vec<Point> = Vec::new();
-    for (level, contour) in levels.iter().zip(&contours) {
-        for line in &contour.lines {
-            label(&mut sheet, line, &format!("{} %", short(*level, 2)), &panel, &mut taken);
+    // The stressed contour takes its place first.
+    let mut order: Vec<usize> = (0..levels.len()).collect();
+    order.sort_by_key(|n| levels[*n].abs() != STRESSED);
+    for n in order {
+        let level = levels[n];
+        for line in &contours[n].lines {
+            label(&mut sheet, line, &format!("{} %", short(level, 2)), &panel, &mut taken);
         }
     }
     sheet.layer("axes");

@@ -94,17 +94,18 @@ impl<'a> Tracer<'a> {
             if outside {
                 break;
             }
+            // A step that would meet a plate goes straight there: beyond a sheet the field is another one.
+            if let Some(end) = self.hit(s, k1.map(|k| sign * k)) {
+                line.extend(self.at(end).map(|a| a.0));
+                hit = true;
+                break;
+            }
             let ahead = |k: [f64; 2], part: f64| [s[0] + sign * part * k[0], s[1] + sign * part * k[1]];
             let slope = |at: [f64; 2]| self.at(at).map(|a| a.1);
             let Some(k2) = slope(ahead(k1, 0.5)) else { break };
             let Some(k3) = slope(ahead(k2, 0.5)) else { break };
             let Some(k4) = slope(ahead(k3, 1.0)) else { break };
             let by = [0, 1].map(|d| sign * (k1[d] + 2.0 * k2[d] + 2.0 * k3[d] + k4[d]) / 6.0);
-            if let Some(end) = self.hit(s, by) {
-                line.extend(self.at(end).map(|a| a.0));
-                hit = true;
-                break;
-            }
             s = [s[0] + by[0], s[1] + by[1]];
         }
         Traced { points: line, hit }

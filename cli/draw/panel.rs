@@ -182,7 +182,7 @@ impl Panel {
             tick(sheet, [x0, y], [x0 - TICK / 2.0, y]);
         }
         if !self.y.label.is_empty() {
-            let x = x0 - TICK - TICK_LABEL - widest - theme::TEXT;
+            let x = (x0 - TICK - TICK_LABEL - widest - theme::TEXT).max(theme::TEXT * 0.7);
             sheet.upwards(&self.y.label, [x, (y0 + y1) / 2.0], Anchor::Middle);
         }
     }
