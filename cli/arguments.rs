@@ -30,8 +30,9 @@ z up. Positive tilt raises the free (+x) edge, positive roll the +y edge.
 Units: lengths m, cm, mm, um, in; angles deg, rad, mrad, arcmin; voltage V, kV.";
 
 const ABOUT_DRAW: &str = "\
-A picture of a bench: the potential or the field lines in a cross-section with the plates true to scale and
-their edges enlarged, or the charge density along the plates. Or the field itself, for another viewer.
+A picture of a bench: the potential or the field lines in a cross-section with the plates true to
+scale and their edges enlarged, or the charge density along the plates. Or the field itself, for
+another viewer.
 
 In space the cross-section is the plane y = constant through the middle of where the plates overlap.";
 
@@ -161,7 +162,7 @@ pub enum Format {
     Svg,
     /// Raster picture, 300 pixels to the inch.
     Png,
-    /// Potential and field on the fitted grid: VTK XML structured grid, in metres, V and V/m.
+    /// Potential and field on the grid: VTK XML structured grid, in SI units.
     Vts,
 }
 
@@ -182,11 +183,11 @@ pub struct DrawArguments {
     #[arg(long, short, value_name = "FILE", allow_hyphen_values = true)]
     pub output: PathBuf,
 
-    /// Form of the output [default: as the file name ends].
+    /// Form of the output [default: by the file name].
     #[arg(long, value_name = "FORMAT", value_enum)]
     pub format: Option<Format>,
 
-    /// Level of the grid to draw from [default: 12 per metre, 6 in space, 4 for a .vts in space].
+    /// Level of the grid [default: 12 with --per-metre, else 6; 4 for a .vts].
     ///
     /// A finer grid takes more time and memory; the picture hardly changes.
     #[arg(long, value_name = "N", allow_hyphen_values = true)]
@@ -230,10 +231,12 @@ mod tests {
     #[test]
     fn help_fits_the_terminal() {
         let mut command = Arguments::command();
-        let assess = command.find_subcommand_mut("assess").unwrap();
-        for help in [assess.render_help(), assess.render_long_help()].map(|h| h.to_string()) {
-            assert!(help.contains("Exit codes:") && help.contains("-2mrad"));
-            assert!(help.lines().all(|l| l.chars().count() <= 100), "{help}");
+        for name in ["assess", "draw"] {
+            let command = command.find_subcommand_mut(name).unwrap();
+            for help in [command.render_help(), command.render_long_help()].map(|h| h.to_string()) {
+                assert!(help.contains("Exit codes:") && help.contains("-2mrad"));
+                assert!(help.lines().all(|l| l.chars().count() <= 100), "{help}");
+            }
         }
     }
 }

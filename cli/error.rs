@@ -102,13 +102,15 @@ impl Error {
         use tiltgap_solver::Error as Solver;
         match self {
             Error::Job(JobError::OutOfReach { .. }) => NOT_REACHED,
-            Error::Bench(_) | Error::Job(_) | Error::Draw(_) | Error::File(_) => BAD_INPUT,
+            Error::Bench(_) | Error::Job(_) | Error::Draw(_) => BAD_INPUT,
+            Error::File(OutputError::Name { .. }) => BAD_INPUT,
             Error::Solver(Solver::Arrangement(_) | Solver::Question(_)) => BAD_INPUT,
             Error::Solver(Solver::NotConverged { .. } | Solver::AccuracyNotReached { .. }) => NOT_REACHED,
             Error::Output(error) if error.kind() == io::ErrorKind::BrokenPipe => GOOD,
             Error::NotFinite { .. }
             | Error::NotShown(_)
             | Error::Render(_)
+            | Error::File(OutputError::System { .. })
             | Error::Threads { .. }
             | Error::Output(_) => INTERNAL,
         }
@@ -156,6 +158,9 @@ mod tests {
             (not_reached.into(), NOT_REACHED),
             (JobError::OutOfReach { text: "1e-15".into() }.into(), NOT_REACHED),
             (JobError::Accuracy { text: "0".into() }.into(), BAD_INPUT),
+            (DrawError::PixelsToStdout.into(), BAD_INPUT),
+            (OutputError::Name { path: "a".into(), reason: "x".into() }.into(), BAD_INPUT),
+            (OutputError::System { path: "a".into(), reason: "full".into() }.into(), INTERNAL),
             (io::Error::from(io::ErrorKind::BrokenPipe).into(), GOOD),
             (io::Error::from(io::ErrorKind::StorageFull).into(), INTERNAL),
             (Error::NotFinite { key: "energy_j".into(), value: f64::NAN }, INTERNAL),

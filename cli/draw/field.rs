@@ -13,8 +13,8 @@ use super::theme;
 use super::views::{self, View};
 
 /// Lines on the gap side of the upper plate, in the main view and, more densely, in the enlarged ones.
-const LINES: usize = 88;
-const LINES_ENLARGED: usize = 220;
+const LINES: usize = 140;
+const LINES_ENLARGED: usize = 420;
 /// Where a line begins: this part of a cell off the plate.
 const OFF_PLATE: f64 = 0.25;
 /// Length of an arrowhead and half its width, in mm; the shortest line that bears one; the least distance of two.

@@ -17,12 +17,23 @@ pub enum Target {
 
 /// Why a file was not written. An older file of that name is still there.
 #[derive(Debug, thiserror::Error)]
-#[error("{path:?} cannot be written: {reason}; check the folder and its permissions, or give another name with -o")]
-pub struct OutputError {
-    /// The file.
-    pub path: PathBuf,
-    /// What is wrong.
-    pub reason: String,
+pub enum OutputError {
+    /// The name will not do.
+    #[error("{path:?} cannot be written: {reason}; give another name with -o")]
+    Name {
+        /// The file.
+        path: PathBuf,
+        /// What is wrong.
+        reason: String,
+    },
+    /// The system did not take it.
+    #[error("{path:?} cannot be written: {reason}; check the space and the permissions of its folder")]
+    System {
+        /// The file.
+        path: PathBuf,
+        /// What the system says.
+        reason: String,
+    },
 }
 
 impl fmt::Display for Target {
@@ -58,7 +69,7 @@ impl Target {
     /// No such folder, or a folder in place of the file.
     pub fn check(&self) -> Result<(), OutputError> {
         let Target::File(path) = self else { return Ok(()) };
-        let wrong = |reason: String| Err(OutputError { path: path.clone(), reason });
+        let wrong = |reason: String| Err(OutputError::Name { path: path.clone(), reason });
         if path.is_dir() {
             return wrong("it is a directory".into());
         }
@@ -80,7 +91,7 @@ impl Target {
                 Ok(stdout.flush()?)
             }
             Target::File(path) => replace(path, bytes)
-                .map_err(|e| OutputError { path: path.clone(), reason: e.to_string() }.into()),
+                .map_err(|e| OutputError::System { path: path.clone(), reason: e.to_string() }.into()),
         }
     }
 }
