@@ -7,14 +7,15 @@ use super::caption::{self, Caption};
 use super::lines::{thinned, Tracer};
 use super::potential::{Bands, Equipotentials};
 use super::profile::{profiles, Profile};
-use super::scene::Scene;
+use super::scene::{Scene, MM};
 use super::sheet::{Point, Sheet};
 use super::theme;
 use super::views::{self, View};
 
-/// Lines on the gap side of the upper plate, in the main view and, more densely, in the enlarged ones.
-const LINES: usize = 140;
-const LINES_ENLARGED: usize = 420;
+/// Distance of lines in the gap on the page, in mm: this much, and this part of the height of the gap on the page, so that a
+/// wide gap is not grey with lines. The height counts as at most this part of the view's.
+const SPACING: [f64; 2] = [0.6, 0.03];
+const HIGHEST_GAP: f64 = 0.35;
 /// Where a line begins: this part of a cell off the plate.
 const OFF_PLATE: f64 = 0.25;
 /// Length of an arrowhead and half its width, in mm; the shortest line that bears one; the least distance of two.
@@ -128,19 +129,17 @@ pub fn field(scene: &Scene, level: &Level) -> Sheet {
     let upper = &plates[1];
     let on_gap: f64 = upper.density[0].iter().zip(&upper.share_mm).map(|(d, s)| (d * s).abs()).sum();
     let within = [views[0].panel.x.range, views[0].panel.y.range];
-    for (enlarged, count) in [(false, LINES), (true, LINES_ENLARGED)] {
-        let chosen: Vec<&View> = views.iter().filter(|v| v.detail.is_some() == enlarged).collect();
-        if chosen.is_empty() || on_gap == 0.0 {
-            continue;
-        }
-        let all = lines(scene, &plates, on_gap / count as f64, within);
-        for View { panel, .. } in chosen {
-            let mut heads = Vec::new();
-            for line in &all {
-                let line: Vec<Point> = line.iter().map(|p| panel.place(*p)).collect();
-                for part in panel.clip_line(&line) {
-                    with_arrow(&mut sheet, &thinned(&part), &mut heads);
-                }
+    let pose = &scene.setup.question.arrangement.pose;
+    let length = upper.share_mm.iter().sum::<f64>();
+    for View { panel, .. } in views.iter().filter(|_| on_gap > 0.0) {
+        let scale = panel.size[0] / (panel.x.range[1] - panel.x.range[0]);
+        let gap = (scale * MM * pose.gap_m).min(HIGHEST_GAP * panel.size[1]);
+        let count = scale * length / (SPACING[0] + SPACING[1] * gap);
+        let mut heads = Vec::new();
+        for line in lines(scene, &plates, on_gap / count, within) {
+            let line: Vec<Point> = line.iter().map(|p| panel.place(*p)).collect();
+            for part in panel.clip_line(&line) {
+                with_arrow(&mut sheet, &thinned(&part), &mut heads);
             }
         }
     }
