@@ -183,7 +183,7 @@ pub struct DrawArguments {
     #[arg(long, short, value_name = "FILE", allow_hyphen_values = true)]
     pub output: PathBuf,
 
-    /// Form of the output [default: by the file name].
+    /// Format [default: by the file name].
     #[arg(long, value_name = "FORMAT", value_enum)]
     pub format: Option<Format>,
 
