@@ -155,11 +155,8 @@ impl Bench {
     pub fn question(&self, dimensions: Dimensions, connection: Connection) -> Question {
         Question {
             arrangement: Arrangement {
-                lower: self.lower,
-                upper: self.upper,
-                pose: self.pose,
                 surroundings: self.surroundings,
-                dimensions,
+                ..Arrangement::open(self.lower, self.upper, self.pose, dimensions)
             },
             hinge: self.hinge,
             connection,

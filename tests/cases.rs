@@ -3,7 +3,7 @@
 use std::sync::OnceLock;
 
 use serde_json::Value;
-use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose, Surroundings};
+use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose};
 use tiltgap_solver::{assess, Assessment, Connection, Error, Estimate, Params, Question, EPS0};
 
 /// The cases of a family of `reference-cases`.
@@ -37,36 +37,34 @@ pub fn plates(case: &Value) -> Arrangement {
         width_m: number(&p["width"]),
         thickness_m: number(&p["thickness"]),
     };
-    Arrangement {
-        lower: plate(&g["lower"]),
-        upper: plate(&g["upper"]),
-        pose: Pose {
+    Arrangement::open(
+        plate(&g["lower"]),
+        plate(&g["upper"]),
+        Pose {
             gap_m: number(&g["gap"]),
             tilt_rad: number(&g["tilt_deg"]).to_radians(),
             roll_rad: number(&g["roll_deg"]).to_radians(),
             shift_m: [number(&g["shift"][0]), number(&g["shift"][1])],
         },
-        surroundings: Surroundings::Open,
-        dimensions: Dimensions::Three,
-    }
+        Dimensions::Three,
+    )
 }
 
 /// The strips of a two-dimensional case.
 pub fn strips(case: &Value) -> Arrangement {
     let g = &case["geometry"];
     let plate = |length: &Value| Plate { length_m: number(length), width_m: 1.0, thickness_m: 0.0 };
-    Arrangement {
-        lower: plate(&g["lower_length"]),
-        upper: plate(&g["upper_length"]),
-        pose: Pose {
+    Arrangement::open(
+        plate(&g["lower_length"]),
+        plate(&g["upper_length"]),
+        Pose {
             gap_m: number(&g["gap"]),
             tilt_rad: number(&g["tilt_deg"]).to_radians(),
             roll_rad: 0.0,
             shift_m: [number(&g["shift_x"]), 0.0],
         },
-        surroundings: Surroundings::Open,
-        dimensions: Dimensions::Two,
-    }
+        Dimensions::Two,
+    )
 }
 
 /// Whether both plates are sheets.

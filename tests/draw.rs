@@ -27,7 +27,7 @@ fn solved(arrangement: &Arrangement, q: usize) -> Level {
 fn plates(dimensions: Dimensions, pose: Pose) -> Arrangement {
     let lower = Plate { length_m: 0.1, width_m: 0.08, thickness_m: 0.0 };
     let upper = Plate { length_m: 0.09, ..lower };
-    Arrangement { lower, upper, pose, surroundings: Surroundings::Open, dimensions }
+    Arrangement::open(lower, upper, pose, dimensions)
 }
 
 /// The set-up of a bench given as JSON, per metre or in space.
@@ -54,7 +54,7 @@ fn the_charge_of_the_faces_is_that_of_the_capacitance_matrix() {
         [(Dimensions::Two, pose, 6), (Dimensions::Three, pose, 3), (Dimensions::Three, rolled, 2)]
     {
         let level = solved(&plates(dimensions, pose), q);
-        for (p, plate) in [level.grid.lower, level.grid.upper].iter().enumerate() {
+        for (p, plate) in [level.grid.lower.plate(), level.grid.upper.plate()].into_iter().enumerate() {
             let charge = surface_charge(&level, plate);
             for c in 0..2 {
                 let sum: f64 =

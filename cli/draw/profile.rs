@@ -25,7 +25,7 @@ pub fn profiles(scene: &Scene, level: &Level) -> [Profile; 2] {
     let size_m = question.arrangement.size_m();
     let to_si = EPS0 * question.relative_permittivity / size_m;
     let grid = &level.grid;
-    [grid.lower, grid.upper].map(|plate| {
+    [*grid.lower.plate(), *grid.upper.plate()].map(|plate| {
         let charge = surface_charge(level, &plate);
         let ny = charge.shape[1];
         // The row of nodes nearest to the plane.

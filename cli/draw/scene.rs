@@ -105,7 +105,7 @@ impl<'a> Scene<'a> {
                 Outline::new(&arrangement.lower, arrangement, false, y_m),
                 Outline::new(&arrangement.upper, arrangement, true, y_m),
             ],
-            nodes: [plate(&level.grid.lower), plate(&level.grid.upper)],
+            nodes: [plate(level.grid.lower.plate()), plate(level.grid.upper.plate())],
             columns: columns[0].clone(),
         }
     }

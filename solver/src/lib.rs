@@ -13,17 +13,21 @@ mod family;
 mod field;
 mod hold;
 mod level;
+mod metal;
 mod modes;
 mod operator;
 mod section;
 mod separable;
+mod sheet;
+mod shell;
+mod stack;
 mod surface;
 mod wedge;
 mod wrench;
 
 pub use assess::{
-    assess, hinge_offset_m, Assessment, Components, Connection, Estimate, Factor, Factors, Hinge, Ideal,
-    LevelReport, Params, Progress, Question, EPS0,
+    assess, hinge_offset_m, Assessment, Components, Connection, Estimate, Factor, Factors, ForceAndTorque,
+    GuardReport, Hinge, Ideal, LevelReport, Params, Progress, Question, EPS0,
 };
 pub use cells::cell_field;
 pub use error::Error;

@@ -6,7 +6,7 @@
 
 use tiltgap_meshes::NodeBox;
 
-use crate::corner::{differences, for_each_octant, positions, Star};
+use crate::corner::{cell, differences, for_each_octant, positions, Star};
 use crate::level::Level;
 
 /// Charge of the columns of nodes of a plate; lengths in units of the size, permittivity 1.
@@ -41,8 +41,9 @@ pub fn surface_charge(level: &Level, plate: &NodeBox) -> SurfaceCharge {
                 let (at, node) = ([i, j, k], grid.index(i, j, k));
                 let star = Star::new(differences(planes, j, k, [ny, nz]));
                 for_each_octant(at, shape, |s| {
-                    let cell = k + s[2]; // the cell between planes cell - 1 and cell
-                    let face = if cell > plate.k[1] { 2 } else { usize::from(cell > plate.k[0]) };
+                    let above = k + s[2]; // the plane above the cell
+                    let face = if above > plate.k[1] { 2 } else { usize::from(above > plate.k[0]) };
+                    let permittivity = grid.permittivity(cell(at, s));
                     let normals = star.normals(s);
                     let inverse = 1.0 / star.determinant(s);
                     // Ends of the edge along each axis, and the difference of both potentials along it.
@@ -57,7 +58,7 @@ pub fn surface_charge(level: &Level, plate: &NodeBox) -> SurfaceCharge {
                         }
                     }
                     for l in 0..3 {
-                        let flux = [0, 1].map(|c| tiltgap_meshes::dot(g[c], normals[l]) / 8.0);
+                        let flux = [0, 1].map(|c| permittivity * tiltgap_meshes::dot(g[c], normals[l]) / 8.0);
                         for (side, sign) in [(0, -1.0), (1, 1.0)] {
                             let mut end = at;
                             end[l] = end[l] + s[l] + side - 1;
