@@ -7,7 +7,7 @@ use super::caption::{self, Caption};
 use super::lines::{thinned, Tracer};
 use super::potential::{Bands, Equipotentials};
 use super::profile::{profiles, Profile};
-use super::scene::{Scene, MM};
+use super::scene::{PlateNodes, Scene, MM};
 use super::sheet::{Point, Sheet};
 use super::theme;
 use super::views::{self, View};
@@ -49,32 +49,44 @@ fn seeds(profile: &Profile, side: usize, part: f64) -> Vec<f64> {
     places
 }
 
+/// Where the lines of a plate begin, in numbers of nodes of the scene, and the sign of the charge there.
+fn starts(profile: &Profile, nodes: PlateNodes, part: f64) -> Vec<([f64; 2], f64)> {
+    let [i, k] = nodes.map(|range| range.map(|n| n as f64));
+    let off = [-OFF_PLATE, OFF_PLATE];
+    let mut all = Vec::new();
+    for side in 0..2 {
+        for place in seeds(profile, side, part) {
+            let sign = profile.density[side][place.round() as usize].signum();
+            let node = (place as usize).min(profile.columns.len() - 2);
+            let [a, b] = [profile.columns[node] as f64, profile.columns[node + 1] as f64];
+            all.push(([a + (place - node as f64) * (b - a), k[side] + off[side]], sign));
+        }
+        // The nodes of a rim crowd at its corners as the charge does.
+        let count = (profile.rims[side].abs() / part).round() as usize;
+        all.extend((0..count).map(|m| {
+            let height = k[0] + (k[1] - k[0]) * (m as f64 + 0.5) / count as f64;
+            ([i[side] + off[side], height], profile.rims[side].signum())
+        }));
+    }
+    all
+}
+
 /// All lines, each in the direction of the field, in mm. `part` is the charge of a line (C/m^2 times mm).
 fn lines(scene: &Scene, plates: &[Profile; 2], part: f64, within: [[f64; 2]; 2]) -> Vec<Vec<[f64; 2]>> {
     let tracer = Tracer::new(scene);
     let mut all = Vec::new();
     // From the upper plate; then what reaches the lower one from elsewhere.
-    for (plate, nodes) in [(1, scene.nodes[1]), (0, scene.nodes[0])] {
-        if scene.outlines[plate].is_none() {
-            continue;
-        }
-        for side in 0..2 {
-            let k = nodes[1][side] as f64 + if side == 0 { -OFF_PLATE } else { OFF_PLATE };
-            for place in seeds(&plates[plate], side, part) {
-                let sign = plates[plate].density[side][place.round() as usize].signum();
-                let columns = &plates[plate].columns;
-                let node = (place as usize).min(columns.len() - 2);
-                let [a, b] = [columns[node] as f64, columns[node + 1] as f64];
-                let traced = tracer.trace([a + (place - node as f64) * (b - a), k], sign, within);
-                if plate == 0 && traced.hit {
-                    continue;
-                }
-                let mut line = traced.points;
-                if sign < 0.0 {
-                    line.reverse();
-                }
-                all.push(line);
+    for plate in [1, 0].into_iter().filter(|&plate| scene.outlines[plate].is_some()) {
+        for (start, sign) in starts(&plates[plate], scene.nodes[plate], part) {
+            let traced = tracer.trace(start, sign, within);
+            if plate == 0 && traced.hit {
+                continue;
             }
+            let mut line = traced.points;
+            if sign < 0.0 {
+                line.reverse();
+            }
+            all.push(line);
         }
     }
     all
@@ -131,10 +143,13 @@ pub fn field(scene: &Scene, level: &Level) -> Sheet {
     let within = [views[0].panel.x.range, views[0].panel.y.range];
     let pose = &scene.setup.question.arrangement.pose;
     let length = upper.share_mm.iter().sum::<f64>();
-    for View { panel, .. } in views.iter().filter(|_| on_gap > 0.0) {
+    for View { panel, detail } in views.iter().filter(|_| on_gap > 0.0) {
         let scale = panel.size[0] / (panel.x.range[1] - panel.x.range[0]);
-        let gap = (scale * MM * pose.gap_m).min(HIGHEST_GAP * panel.size[1]);
-        let count = scale * length / (SPACING[0] + SPACING[1] * gap);
+        let gap_mm = MM * pose.gap_m;
+        // In an enlarged view the field is that of the gap there.
+        let local_mm = detail.as_ref().map_or(gap_mm, |d| d.gap_mm);
+        let height = (scale * local_mm).min(HIGHEST_GAP * panel.size[1]);
+        let count = scale * length / (SPACING[0] + SPACING[1] * height) * local_mm / gap_mm;
         let mut heads = Vec::new();
         for line in lines(scene, &plates, on_gap / count, within) {
             let line: Vec<Point> = line.iter().map(|p| panel.place(*p)).collect();
@@ -158,7 +173,13 @@ mod tests {
         // Density 1 over a plate of five nodes: the nodes at the edges have half of a share.
         let share_mm = vec![0.5, 1.0, 1.0, 1.0, 0.5];
         let density = [vec![1.0; 5], vec![0.0; 5]];
-        let profile = Profile { columns: vec![10, 11, 12, 13, 14], x_mm: vec![0.0; 5], density, share_mm };
+        let profile = Profile {
+            columns: vec![10, 11, 12, 13, 14],
+            x_mm: vec![0.0; 5],
+            density,
+            rims: [0.0; 2],
+            share_mm,
+        };
         let places = seeds(&profile, 0, 0.5);
         assert_eq!(places.len(), 8);
         for (n, place) in places.iter().enumerate() {

@@ -37,6 +37,8 @@ pub struct Detail {
     pub letter: &'static str,
     /// Enlargement over the main view.
     pub times: f64,
+    /// The gap there, in mm.
+    pub gap_mm: f64,
 }
 
 /// A view from `corner` of this size in mm, centred at a point, with `scale` mm to the millimetre.
@@ -94,9 +96,13 @@ pub fn views(scene: &Scene, top: f64) -> (Vec<View>, f64) {
         let times = times(gap);
         // The lower plate's facing surface is the plane z = 0.
         let z = gap / 2.0;
+        // Nothing is enlarged that the main view does not show.
+        let half = width / (2.0 * scale * times);
+        let [from, to] = all[0].panel.x.range;
+        let at = if to - from > 2.0 * half { at.clamp(from + half, to - half) } else { at };
         let corner = [x, bottom];
         let panel = view(corner, [width, ENLARGED], [at, z], scale * times, ["x (mm)", "z (mm)"]);
-        all.push(View { panel, detail: Some(Detail { letter, times }) });
+        all.push(View { panel, detail: Some(Detail { letter, times, gap_mm: gap }) });
         x += width + LEFT + RIGHT;
     }
     if all.len() > 1 {
@@ -152,7 +158,7 @@ pub fn axes(sheet: &mut Sheet, views: &[View]) {
     sheet.layer("axes");
     for view in views {
         view.panel.axes(sheet);
-        if let Some(Detail { letter, times }) = &view.detail {
+        if let Some(Detail { letter, times, .. }) = &view.detail {
             view.panel.letter(sheet, &format!("{letter} (×{})", short(*times, 2)));
         }
     }
