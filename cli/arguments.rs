@@ -2,7 +2,7 @@
 
 use std::path::PathBuf;
 
-use clap::{Args, Parser, Subcommand};
+use clap::{Args, Parser, Subcommand, ValueEnum};
 
 const EXIT_CODES: &str = "\
 Exit codes:
@@ -29,6 +29,21 @@ z up. Positive tilt raises the free (+x) edge, positive roll the +y edge.
 
 Units: lengths m, cm, mm, um, in; angles deg, rad, mrad, arcmin; voltage V, kV.";
 
+const ABOUT_DRAW: &str = "\
+A picture of a bench: the potential or the field lines in a cross-section with the plates true to
+scale and their edges enlarged, or the charge density along the plates. Or the field itself, for
+another viewer.
+
+In space the cross-section is the plane y = constant through the middle of where the plates overlap.";
+
+const DRAW_EXAMPLES: &str = "\
+Examples:
+  tiltgap draw --what potential -o potential.svg
+  tiltgap draw bench.json --what field --tilt 1deg -o field.png
+  tiltgap draw bench.json --what charge --per-metre -o charge.svg
+  tiltgap draw bench.json --what field -o field.vts      potential and field, for other viewers
+  tiltgap draw --what potential -o - --format svg        to standard output";
+
 /// The whole command line.
 #[derive(Debug, Parser)]
 #[command(
@@ -50,15 +65,18 @@ pub enum Command {
     /// Charge, force and hinge torque of a bench, beside the ideal formula.
     #[command(long_about = ABOUT_ASSESS, after_help = EXIT_CODES, after_long_help = format!("{EXAMPLES}\n\n{EXIT_CODES}"))]
     Assess(AssessArguments),
+    /// A picture of a bench: potential, field lines or charge density.
+    #[command(long_about = ABOUT_DRAW, after_help = EXIT_CODES, after_long_help = format!("{DRAW_EXAMPLES}\n\n{EXIT_CODES}"))]
+    Draw(DrawArguments),
     /// Print the JSON Schema of the bench file, for editors.
     Schema,
     /// Print the demo bench file, to begin with.
     Demo,
 }
 
-/// Arguments of `assess`.
+/// A bench, and the options that replace values of it: what `assess` and `draw` have in common.
 #[derive(Clone, Debug, Default, Args)]
-pub struct AssessArguments {
+pub struct BenchArguments {
     /// Bench file (JSON); `-` reads standard input. Without it: the built-in demo bench.
     #[arg(value_name = "BENCH")]
     pub bench: Option<PathBuf>,
@@ -95,27 +113,85 @@ pub struct AssessArguments {
     #[arg(long, value_name = "WIRING", allow_hyphen_values = true, verbatim_doc_comment)]
     pub connection: Option<String>,
 
-    /// Relative standard uncertainty accepted [default: 1e-4].
-    ///
-    /// The largest one of force and torque, numerical part; above 0 and at most 0.1.
-    #[arg(long, value_name = "NUMBER", allow_hyphen_values = true)]
-    pub accuracy: Option<String>,
-
     /// Cross-section of very wide plates (2-D): results per metre of width.
     ///
     /// In open surroundings it needs the floating connection.
     #[arg(long)]
     pub per_metre: bool,
 
-    /// Write JSON in SI units instead of tables.
-    #[arg(long)]
-    pub json: bool,
-
     /// Threads to compute with, 1 to 64 [default: all cores].
     ///
     /// The result does not depend on it, to the last bit.
     #[arg(long, value_name = "N", allow_hyphen_values = true)]
     pub threads: Option<String>,
+}
+
+/// Arguments of `assess`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct AssessArguments {
+    /// The bench.
+    #[command(flatten)]
+    pub bench: BenchArguments,
+
+    /// Relative standard uncertainty accepted [default: 1e-4].
+    ///
+    /// The largest one of force and torque, numerical part; above 0 and at most 0.1.
+    #[arg(long, value_name = "NUMBER", allow_hyphen_values = true)]
+    pub accuracy: Option<String>,
+
+    /// Write JSON in SI units instead of tables.
+    #[arg(long)]
+    pub json: bool,
+}
+
+/// What a picture shows.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum What {
+    /// Cross-section with filled equipotentials.
+    Potential,
+    /// Cross-section with field lines.
+    Field,
+    /// Charge density along both faces of both plates.
+    Charge,
+}
+
+/// Form of the output of `draw`.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Format {
+    /// Vector picture, text as text.
+    Svg,
+    /// Raster picture, 300 pixels to the inch.
+    Png,
+    /// Potential and field on the grid: VTK XML structured grid, in SI units.
+    Vts,
+}
+
+/// Arguments of `draw`.
+#[derive(Clone, Debug, Args)]
+pub struct DrawArguments {
+    /// The bench.
+    #[command(flatten)]
+    pub bench: BenchArguments,
+
+    /// What to show.
+    #[arg(long, value_name = "WHAT", value_enum)]
+    pub what: What,
+
+    /// File to write, .svg, .png or .vts; `-` is standard output.
+    ///
+    /// It appears whole or not at all; a file of that name is replaced.
+    #[arg(long, short, value_name = "FILE", allow_hyphen_values = true)]
+    pub output: PathBuf,
+
+    /// Format [default: by the file name].
+    #[arg(long, value_name = "FORMAT", value_enum)]
+    pub format: Option<Format>,
+
+    /// Level of the grid [default: 12 with --per-metre, else 6; 4 for a .vts].
+    ///
+    /// A finer grid takes more time and memory; the picture hardly changes.
+    #[arg(long, value_name = "N", allow_hyphen_values = true)]
+    pub level: Option<String>,
 }
 
 #[cfg(test)]
@@ -139,10 +215,10 @@ mod tests {
     #[test]
     fn negative_quantities_are_values() {
         let a = assess(&["--tilt", "-2mrad", "-", "--gap=4mm", "--voltage", "-1e2 V"]).unwrap();
-        assert_eq!(a.tilt.as_deref(), Some("-2mrad"));
-        assert_eq!(a.voltage.as_deref(), Some("-1e2 V"));
-        assert_eq!(a.bench, Some("-".into()));
-        assert!(!a.json && !a.per_metre && a.accuracy.is_none());
+        assert_eq!(a.bench.tilt.as_deref(), Some("-2mrad"));
+        assert_eq!(a.bench.voltage.as_deref(), Some("-1e2 V"));
+        assert_eq!(a.bench.bench, Some("-".into()));
+        assert!(!a.json && !a.bench.per_metre && a.accuracy.is_none());
     }
 
     #[test]
@@ -155,10 +231,12 @@ mod tests {
     #[test]
     fn help_fits_the_terminal() {
         let mut command = Arguments::command();
-        let assess = command.find_subcommand_mut("assess").unwrap();
-        for help in [assess.render_help(), assess.render_long_help()].map(|h| h.to_string()) {
-            assert!(help.contains("Exit codes:") && help.contains("-2mrad"));
-            assert!(help.lines().all(|l| l.chars().count() <= 100), "{help}");
+        for name in ["assess", "draw"] {
+            let command = command.find_subcommand_mut(name).unwrap();
+            for help in [command.render_help(), command.render_long_help()].map(|h| h.to_string()) {
+                assert!(help.contains("Exit codes:") && help.contains("-2mrad"));
+                assert!(help.lines().all(|l| l.chars().count() <= 100), "{help}");
+            }
         }
     }
 }

@@ -9,7 +9,7 @@ use std::time::Instant;
 use tiltgap_meshes::Dimensions;
 use tiltgap_solver::{Assessment, Connection, Params, Question};
 
-use crate::arguments::AssessArguments;
+use crate::arguments::{AssessArguments, BenchArguments};
 use crate::bench::{Bench, Override};
 use crate::document::quoted;
 use crate::error::Error;
@@ -134,13 +134,25 @@ fn section(bench: &Bench) -> Result<(Connection, bool), JobError> {
     }
 }
 
-impl Job {
-    /// Checks the arguments and reads the bench.
+/// A bench and the question it puts, as the options have it: what all work on a bench begins with.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Setup {
+    /// The bench, with the options in place.
+    pub bench: Bench,
+    /// The question put to the solver.
+    pub question: Question,
+    /// Threads to compute with.
+    pub threads: usize,
+    /// Whether the floating connection was chosen because nothing was stated.
+    pub floating_chosen: bool,
+}
+
+impl Setup {
+    /// Reads the bench and applies the options.
     ///
     /// # Errors
     /// Whatever of it is wrong, apart from what only the arrangement of the plates can tell.
-    pub fn new(arguments: &AssessArguments, stdin: &mut dyn Read) -> Result<Job, Error> {
-        let accuracy = accuracy(arguments.accuracy.as_deref())?;
+    pub fn new(arguments: &BenchArguments, stdin: &mut dyn Read) -> Result<Setup, Error> {
         let threads = threads(arguments.threads.as_deref())?;
         let overrides = [
             ("pose.gap", "--gap", &arguments.gap),
@@ -158,10 +170,35 @@ impl Job {
         } else {
             (Dimensions::Three, (bench.connection, false))
         };
-        let most = Params::default().memory_bytes;
-        let left = memory::available_bytes().map_or(most, |b| (MEMORY_PART * b as f64) as u64);
-        let params = Params { accuracy, memory_bytes: most.min(left) };
         let question = bench.question(dimensions, connection);
+        Ok(Setup { bench, question, threads, floating_chosen })
+    }
+}
+
+/// Memory that a level may take, in bytes.
+pub fn memory_for_a_level() -> u64 {
+    let most = Params::default().memory_bytes;
+    memory::available_bytes().map_or(most, |b| (MEMORY_PART * b as f64) as u64).min(most)
+}
+
+/// Threads to compute with.
+///
+/// # Errors
+/// Threads that do not start.
+pub fn pool(threads: usize) -> Result<rayon::ThreadPool, Error> {
+    let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build();
+    pool.map_err(|e| Error::Threads { threads, reason: e.to_string() })
+}
+
+impl Job {
+    /// Checks the arguments and reads the bench.
+    ///
+    /// # Errors
+    /// Whatever of it is wrong, apart from what only the arrangement of the plates can tell.
+    pub fn new(arguments: &AssessArguments, stdin: &mut dyn Read) -> Result<Job, Error> {
+        let accuracy = accuracy(arguments.accuracy.as_deref())?;
+        let Setup { bench, question, threads, floating_chosen } = Setup::new(&arguments.bench, stdin)?;
+        let params = Params { accuracy, memory_bytes: memory_for_a_level() };
         Ok(Job { bench, question, params, threads, floating_chosen })
     }
 
@@ -180,10 +217,7 @@ impl Job {
         stderr: &mut (dyn Write + Send),
         terminal: bool,
     ) -> Result<Report, Error> {
-        let pool = rayon::ThreadPoolBuilder::new()
-            .num_threads(self.threads)
-            .build()
-            .map_err(|e| Error::Threads { threads: self.threads, reason: e.to_string() })?;
+        let pool = pool(self.threads)?;
         let mut line = ProgressLine::new(stderr, terminal);
         let assessment = pool
             .install(|| tiltgap_solver::assess(&self.question, &self.params, &mut |news| line.show(news)))?;
@@ -201,9 +235,9 @@ impl Job {
 mod tests {
     use super::*;
 
-    fn job(change: impl Fn(&mut AssessArguments)) -> Result<Job, String> {
+    fn job(change: impl Fn(&mut BenchArguments)) -> Result<Job, String> {
         let mut arguments = AssessArguments::default();
-        change(&mut arguments);
+        change(&mut arguments.bench);
         Job::new(&arguments, &mut std::io::empty()).map_err(|e| e.to_string())
     }
 
@@ -264,8 +298,8 @@ mod tests {
     #[test]
     fn a_connection_that_nobody_stated_is_chosen() {
         let text = crate::source::DEMO.replace(", \"connection\": \"grounded\"", "");
-        let arguments =
-            AssessArguments { bench: Some("-".into()), per_metre: true, ..AssessArguments::default() };
+        let bench = BenchArguments { bench: Some("-".into()), per_metre: true, ..BenchArguments::default() };
+        let arguments = AssessArguments { bench, ..AssessArguments::default() };
         let job = Job::new(&arguments, &mut text.as_bytes()).unwrap();
         assert!(job.floating_chosen && job.question.connection == Connection::Floating);
         let shifted = text.replace("\"shift\": [\"0 mm\", \"0 mm\"]", "\"shift\": [\"0 mm\", \"1 mm\"]");

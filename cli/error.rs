@@ -5,6 +5,9 @@ use std::io;
 use crate::assess::JobError;
 use crate::bench::BenchError;
 use crate::concise::NotANumber;
+use crate::draw::output::OutputError;
+use crate::draw::render::RenderError;
+use crate::draw::DrawError;
 use crate::progress::grouped;
 
 /// Exit code of a run that did what was asked for.
@@ -29,6 +32,15 @@ pub enum Error {
     /// The options are at fault.
     #[error(transparent)]
     Job(#[from] JobError),
+    /// The options of `draw` are at fault.
+    #[error(transparent)]
+    Draw(#[from] DrawError),
+    /// A file could not be written.
+    #[error(transparent)]
+    File(#[from] OutputError),
+    /// A picture could not be made.
+    #[error(transparent)]
+    Render(#[from] RenderError),
     /// The arrangement is at fault, or the calculation came to no good end.
     #[error("{}", sentence(.0))]
     Solver(#[from] tiltgap_solver::Error),
@@ -90,13 +102,17 @@ impl Error {
         use tiltgap_solver::Error as Solver;
         match self {
             Error::Job(JobError::OutOfReach { .. }) => NOT_REACHED,
-            Error::Bench(_) | Error::Job(_) => BAD_INPUT,
+            Error::Bench(_) | Error::Job(_) | Error::Draw(_) => BAD_INPUT,
+            Error::File(OutputError::Name { .. }) => BAD_INPUT,
             Error::Solver(Solver::Arrangement(_) | Solver::Question(_)) => BAD_INPUT,
             Error::Solver(Solver::NotConverged { .. } | Solver::AccuracyNotReached { .. }) => NOT_REACHED,
             Error::Output(error) if error.kind() == io::ErrorKind::BrokenPipe => GOOD,
-            Error::NotFinite { .. } | Error::NotShown(_) | Error::Threads { .. } | Error::Output(_) => {
-                INTERNAL
-            }
+            Error::NotFinite { .. }
+            | Error::NotShown(_)
+            | Error::Render(_)
+            | Error::File(OutputError::System { .. })
+            | Error::Threads { .. }
+            | Error::Output(_) => INTERNAL,
         }
     }
 }
@@ -142,6 +158,9 @@ mod tests {
             (not_reached.into(), NOT_REACHED),
             (JobError::OutOfReach { text: "1e-15".into() }.into(), NOT_REACHED),
             (JobError::Accuracy { text: "0".into() }.into(), BAD_INPUT),
+            (DrawError::PixelsToStdout.into(), BAD_INPUT),
+            (OutputError::Name { path: "a".into(), reason: "x".into() }.into(), BAD_INPUT),
+            (OutputError::System { path: "a".into(), reason: "full".into() }.into(), INTERNAL),
             (io::Error::from(io::ErrorKind::BrokenPipe).into(), GOOD),
             (io::Error::from(io::ErrorKind::StorageFull).into(), INTERNAL),
             (Error::NotFinite { key: "energy_j".into(), value: f64::NAN }, INTERNAL),

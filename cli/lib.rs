@@ -1,7 +1,8 @@
 //! Charge, force and torque of a hinged-plate electrostatic balance, from the command line.
 //!
 //! Raw arguments ([`arguments`]) become a checked job ([`assess`]), the job becomes a report, the report becomes a
-//! table ([`screen`]) or JSON ([`report_json`]). The physics is in `tiltgap-solver`, the geometry in `tiltgap-meshes`.
+//! table ([`screen`]) or JSON ([`report_json`]);
+//! [`draw`] makes pictures. The physics is in `tiltgap-solver`, the geometry in `tiltgap-meshes`.
 
 pub mod arguments;
 pub mod assess;
@@ -9,6 +10,7 @@ pub mod bench;
 pub mod caution;
 pub mod concise;
 pub mod document;
+pub mod draw;
 pub mod error;
 #[cfg(test)]
 mod fixture;
@@ -99,6 +101,10 @@ fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(
             } else {
                 screen::screen(&report)?
             }
+        }
+        Command::Draw(arguments) => {
+            let job = draw::Job::new(arguments, streams.stdin)?;
+            return job.run(streams.stdout, streams.stderr, streams.terminal);
         }
         Command::Schema => format!("{:#}\n", schema::bench_schema()),
         Command::Demo => source::DEMO.into(),

@@ -5,6 +5,7 @@ mod cli;
 mod convergence;
 mod coverage;
 mod discrete;
+mod draw;
 mod film;
 mod guard;
 mod ideal_limit;

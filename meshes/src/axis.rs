@@ -278,6 +278,26 @@ impl Axis {
         }
         stencils
     }
+
+    /// Stencils that carry a field from this axis to one where cells are cut into `parts`, for drawing; cubic in the
+    /// parameter as in [`Axis::carry_from`]. The first and the last cell of a segment stay whole: they are small, and there
+    /// the coordinate itself hardly grows with the parameter, so that interpolation would turn it back.
+    pub fn subdivided(&self, parts: usize) -> Vec<Stencil> {
+        let mut stencils = vec![Stencil::at(0)];
+        let mut start = 0;
+        for &cells in &self.segments {
+            for cell in 0..cells {
+                let whole = cell == 0 || cell + 1 == cells;
+                let parts = if whole { 1 } else { parts };
+                stencils.extend((1..=parts).map(|m| {
+                    let parameter = cell as f64 + m as f64 / parts as f64;
+                    lagrange(parameter, cells).shifted(start)
+                }));
+            }
+            start += cells;
+        }
+        stencils
+    }
 }
 
 #[cfg(test)]
@@ -301,6 +321,21 @@ mod tests {
         let walled = Axis::lateral(&[-0.5, 0.5], 2, [Beyond::Wall(-0.6), Beyond::Wall(9.0)]);
         assert_eq!(walled.ends, [End::Held; 2]);
         assert!((walled.nodes[0] + 0.6).abs() < 1e-15 && (walled.nodes[36] - 9.0).abs() < 1e-14);
+    }
+
+    #[test]
+    fn a_subdivided_axis_keeps_its_nodes_and_their_order() {
+        for axis in [
+            Axis::lateral(&[-0.5, 0.5, -0.4, 0.3], 2, [FAR; 2]),
+            Axis::vertical([0.0, 0.1], 0.0, 0.04, 3, [FAR; 2]),
+            Axis::slab(),
+        ] {
+            let fine: Vec<f64> = axis.subdivided(4).iter().map(|s| s.apply(&axis.nodes)).collect();
+            assert!(fine.windows(2).all(|w| w[1] > w[0]));
+            assert!(axis.nodes.iter().all(|x| fine.contains(x)));
+            let cut: usize = axis.segments.iter().map(|n| n + 3 * n.saturating_sub(2)).sum();
+            assert_eq!(fine.len(), cut + 1);
+        }
     }
 
     #[test]

@@ -24,6 +24,16 @@ pub enum Connection {
     Floating,
 }
 
+impl Connection {
+    /// Potentials of the lower and the upper plate, 1 V apart, in this wiring.
+    pub fn potentials(self, level: &Level) -> [f64; 2] {
+        match self {
+            Connection::Grounded => [0.0, 1.0],
+            Connection::Floating => level.neutral(),
+        }
+    }
+}
+
 /// Where the beam turns: at (-arm, height) from the centre of the upper plate's facing surface when parallel.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Hinge {
@@ -261,7 +271,10 @@ struct Units {
 
 impl Question {
     /// Checks everything but the arrangement, which the grid checks.
-    fn check(&self) -> Result<(), Error> {
+    ///
+    /// # Errors
+    /// A sentence about the first value that will not do.
+    pub fn check(&self) -> Result<(), Error> {
         let wrong = |text: String| Err(Error::Question(text));
         if !self.voltage_v.is_finite() || self.voltage_v == 0.0 || self.voltage_v.abs() > VOLTAGE_LIMIT_V {
             return wrong(format!(
@@ -335,13 +348,8 @@ pub fn assess(
     let options = GridOptions::suited(arrangement);
     let size = arrangement.size_m();
     let offset = question.hinge.map(|h| hinge_offset_m(arrangement, &h).map(|c| c / size));
-    let quantities = |level: &Level| {
-        let potential = match question.connection {
-            Connection::Grounded => [0.0, 1.0],
-            Connection::Floating => level.neutral(),
-        };
-        measured(arrangement, level, potential, offset)
-    };
+    let quantities =
+        |level: &Level| measured(arrangement, level, question.connection.potentials(level), offset);
     let family = Family::climb(arrangement, &options, params, &quantities, progress)?;
     let units = question.units();
     let scaled =

@@ -57,7 +57,7 @@ const GUARDED_PART: f64 = 0.01;
 const BEST_STEP: f64 = 0.15;
 /// Memory set aside for a node of the finest level, in bytes: matrix, fields and preconditioner together. Measured peaks
 /// of the whole process are 260 to 300 with half symmetry and 340 with roll; the rest is margin.
-const BYTES_PER_NODE: u64 = 600;
+pub const BYTES_PER_NODE: u64 = 600;
 
 /// Force and torque on one thing, in units of the grid.
 #[derive(Clone, Copy, Debug, PartialEq)]

@@ -4,6 +4,7 @@
 //! one; [`assess()`] puts the SI units back.
 
 mod assess;
+mod cells;
 pub mod cg;
 mod corner;
 mod error;
@@ -16,10 +17,12 @@ mod level;
 mod metal;
 mod modes;
 mod operator;
+mod section;
 mod separable;
 mod sheet;
 mod shell;
 mod stack;
+mod surface;
 mod wedge;
 mod wrench;
 
@@ -27,10 +30,14 @@ pub use assess::{
     assess, hinge_offset_m, Assessment, Components, Connection, Estimate, Factor, Factors, ForceAndTorque,
     GuardReport, Hinge, Ideal, LevelReport, Params, Progress, Question, EPS0,
 };
+pub use cells::cell_field;
 pub use error::Error;
 pub use extrapolate::{extrapolate, observed_order, Limit};
+pub use family::BYTES_PER_NODE;
 pub use field::Field;
 pub use level::{Level, LevelParams, Profile};
 pub use operator::{Matrix, Operator};
+pub use section::Section;
+pub use surface::{surface_charge, SurfaceCharge};
 pub use wedge::{wedge_factors, WedgeFactors};
 pub use wrench::Wrench;
