@@ -1,4 +1,4 @@
-//! A report with round numbers, for the tests of what is made of a report.
+//! A report with round numbers and a table with an invented fringe, for the tests of what is made of them.
 
 use tiltgap_meshes::Dimensions;
 use tiltgap_solver::{Assessment, Connection, Estimate, Factor, Factors, Ideal, LevelReport, Params};
@@ -6,6 +6,12 @@ use tiltgap_solver::{Assessment, Connection, Estimate, Factor, Factors, Ideal, L
 use crate::assess::{Job, Report};
 use crate::bench::Bench;
 use crate::source::{Source, DEMO};
+use crate::tables::axis::{Span, Variable};
+use crate::tables::fit::Campaign;
+use crate::tables::plan::{place, Plan};
+use crate::tables::quantity::{Quantity, Sample};
+use crate::tables::space::{Kind, Space};
+use crate::tables::table::Table;
 
 fn estimate(value: f64, uncertainty: f64) -> Estimate {
     Estimate { value, uncertainty }
@@ -67,4 +73,32 @@ pub fn report() -> Report {
         seconds: 0.31,
         peak_memory_bytes: Some(46_500_000),
     }
+}
+
+/// A table over gap and tilt of the demo bench, made from an invented fringe that grows with the gap.
+pub fn table() -> Table {
+    let question = report().job.question;
+    let spans = [
+        Span { variable: Variable::Gap, from: 0.002, to: 0.008 },
+        Span { variable: Variable::Tilt, from: 0.0, to: 1f64.to_radians() },
+    ];
+    let space = Space::new(&question, Kind::Free, &spans).unwrap();
+    let quantities = Quantity::all(true);
+    let mut campaign = Campaign::new(Plan { nodes: vec![5, 4] });
+    for point in campaign.missing() {
+        let at = place(&space.axes, &point);
+        let lamella = space.lamella(&at);
+        let estimates = quantities
+            .iter()
+            .map(|q| {
+                let [carried, over] = q.carried(&lamella, &space);
+                let excess = 7.0 * at[0] - 0.1 * at[1];
+                // A component that mirrors another must do so here as well.
+                let sign = if q.name() == "force_z" { -1.0 } else { 1.0 };
+                estimate(carried + sign * over * excess, 3e-5)
+            })
+            .collect();
+        campaign.samples.insert(point, Sample { estimates, level: 4, iterations: 17 });
+    }
+    Table::new(space, quantities, &campaign)
 }

@@ -24,6 +24,7 @@ pub mod screen;
 pub mod settings;
 pub mod source;
 pub mod table;
+pub mod tables;
 
 use std::ffi::OsString;
 use std::io::{Read, Write};
