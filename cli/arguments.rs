@@ -9,7 +9,8 @@ Exit codes:
   0  good
   1  the accuracy asked for was not reached, or the calculation did not converge
   2  bad input: the bench, an option or the arrangement of the plates
-  3  internal error";
+  3  internal error
+  130  stopped by Ctrl-C; what was done is kept";
 
 const ABOUT_ASSESS: &str = "\
 Charge, force and hinge torque of a bench, with wedge (tilt) and fringe, beside the ideal formula.
@@ -28,6 +29,28 @@ Directions: x runs along the plate length from the hinge to the free edge, y alo
 z up. Positive tilt raises the free (+x) edge, positive roll the +y edge.
 
 Units: lengths m, cm, mm, um, in; angles deg, rad, mrad, arcmin; voltage V, kV.";
+
+const ABOUT_TABULATE: &str = "\
+Correction factors of a bench as a table: solved at nodes that the program chooses, interpolated in
+between, and checked at points that are no nodes until the interpolated factors are within the
+accuracy.
+
+Two kinds of table. Free: gap, tilt and roll vary independently; what is given no range keeps the
+value of the bench. Along the hinge: the beam turns about its hinge and takes the plate along; the
+bench's gap and shift are those of beam angle 0, where the plates are parallel, and its tilt is not
+used.
+
+Every solved point is saved at once (in FILE.progress). A run that was ended, however it was ended,
+goes on from there with the same command.";
+
+const TABULATE_EXAMPLES: &str = "\
+Examples:
+  tiltgap tabulate bench.json --gaps 2mm..8mm --tilts 0deg..1deg -o table.json
+  tiltgap tabulate bench.json --gaps 2mm..8mm/13 --accuracy 1e-5 -o fine.json
+  tiltgap tabulate bench.json --along-hinge --angles -15mrad..10mrad -o beam.json
+On three machines, and then together:
+  tiltgap tabulate bench.json --gaps 2mm..8mm --part 1/3 -o share1.json     (2/3, 3/3 likewise)
+  tiltgap join share1.json share2.json share3.json -o table.json";
 
 /// The whole command line.
 #[derive(Debug, Parser)]
@@ -50,6 +73,12 @@ pub enum Command {
     /// Charge, force and hinge torque of a bench, beside the ideal formula.
     #[command(long_about = ABOUT_ASSESS, after_help = EXIT_CODES, after_long_help = format!("{EXAMPLES}\n\n{EXIT_CODES}"))]
     Assess(AssessArguments),
+    /// Make a table of correction factors over gap and tilt, or along the beam's way.
+    #[command(long_about = ABOUT_TABULATE, after_help = EXIT_CODES, after_long_help = format!("{TABULATE_EXAMPLES}\n\n{EXIT_CODES}"))]
+    Tabulate(TabulateArguments),
+    /// Put the shares of a table together.
+    #[command(after_help = EXIT_CODES)]
+    Join(JoinArguments),
     /// Print the JSON Schema of the bench file, for editors.
     Schema,
     /// Print the demo bench file, to begin with.
@@ -114,6 +143,90 @@ pub struct AssessArguments {
     /// Threads to compute with, 1 to 64 [default: all cores].
     ///
     /// The result does not depend on it, to the last bit.
+    #[arg(long, value_name = "N", allow_hyphen_values = true)]
+    pub threads: Option<String>,
+}
+
+/// Arguments of `tabulate`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct TabulateArguments {
+    /// Bench file (JSON); `-` reads standard input. Without it: the built-in demo bench.
+    #[arg(value_name = "BENCH")]
+    pub bench: Option<PathBuf>,
+
+    /// Range of the gap, for example 2mm..8mm.
+    ///
+    /// With /7 behind it the table is printed for 7 gaps, evenly spaced, ends included. The nodes are
+    /// the program's business.
+    #[arg(long, value_name = "FROM..TO", allow_hyphen_values = true)]
+    pub gaps: Option<String>,
+
+    /// Range of the tilt, for example 0deg..1deg.
+    #[arg(long, value_name = "FROM..TO", allow_hyphen_values = true)]
+    pub tilts: Option<String>,
+
+    /// Range of the roll, for example -0.2deg..0.2deg.
+    #[arg(long, value_name = "FROM..TO", allow_hyphen_values = true)]
+    pub rolls: Option<String>,
+
+    /// A table along the way of the beam about its hinge; give --angles.
+    #[arg(long)]
+    pub along_hinge: bool,
+
+    /// Range of the beam angle, for example -15mrad..10mrad; positive raises the free edge.
+    #[arg(long, value_name = "FROM..TO", allow_hyphen_values = true)]
+    pub angles: Option<String>,
+
+    /// Wiring, grounded or floating [default: that of the bench].
+    #[arg(long, value_name = "WIRING", allow_hyphen_values = true)]
+    pub connection: Option<String>,
+
+    /// Accuracy of the factors [default: 1e-4].
+    ///
+    /// The largest relative standard uncertainty at a node, and the largest error of the interpolation
+    /// at a check point.
+    #[arg(long, value_name = "NUMBER", allow_hyphen_values = true)]
+    pub accuracy: Option<String>,
+
+    /// Cross-section of very wide plates (2-D): everything per metre of width.
+    #[arg(long)]
+    pub per_metre: bool,
+
+    /// Where the table goes [default: table.json]; `-` is standard output, where nothing is resumed.
+    #[arg(short, long, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+
+    /// Compute share I of N, to be put together with `join`.
+    #[arg(long, value_name = "I/N", allow_hyphen_values = true)]
+    pub part: Option<String>,
+
+    /// Begin anew, over a table or a progress made with other settings.
+    #[arg(long)]
+    pub restart: bool,
+
+    /// Threads to compute with, 1 to 64 [default: all cores].
+    ///
+    /// The table does not depend on it, to the last byte.
+    #[arg(long, value_name = "N", allow_hyphen_values = true)]
+    pub threads: Option<String>,
+}
+
+/// Arguments of `join`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct JoinArguments {
+    /// All shares of one table, in any order.
+    #[arg(value_name = "SHARE", required = true)]
+    pub shares: Vec<PathBuf>,
+
+    /// Where the table goes [default: table.json]; `-` is standard output.
+    #[arg(short, long, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+
+    /// Begin anew, over a table made with other settings.
+    #[arg(long)]
+    pub restart: bool,
+
+    /// Threads for what the checks may ask for beyond the shares, 1 to 64 [default: all cores].
     #[arg(long, value_name = "N", allow_hyphen_values = true)]
     pub threads: Option<String>,
 }

@@ -109,12 +109,23 @@ fn accuracy(text: Option<&str>) -> Result<f64, JobError> {
     Ok(value)
 }
 
-fn threads(text: Option<&str>) -> Result<usize, JobError> {
+/// The threads to compute with: those asked for, or one for each core.
+///
+/// # Errors
+/// [`JobError::Threads`].
+pub fn threads(text: Option<&str>) -> Result<usize, JobError> {
     let Some(text) = text else {
         return Ok(std::thread::available_parallelism().map_or(1, usize::from).min(MOST_THREADS));
     };
     let number: Option<usize> = text.trim().parse().ok();
     number.filter(|n| (1..=MOST_THREADS).contains(n)).ok_or_else(|| JobError::Threads { text: text.into() })
+}
+
+/// Settings of the solver with the memory that can be had.
+pub fn memory_params() -> Params {
+    let most = Params::default().memory_bytes;
+    let left = memory::available_bytes().map_or(most, |b| (MEMORY_PART * b as f64) as u64);
+    Params { memory_bytes: most.min(left), ..Params::default() }
 }
 
 /// What a cross-section needs: the connection, and whether it was chosen here.
@@ -157,9 +168,7 @@ impl Job {
         } else {
             (Dimensions::Three, (bench.connection, false))
         };
-        let most = Params::default().memory_bytes;
-        let left = memory::available_bytes().map_or(most, |b| (MEMORY_PART * b as f64) as u64);
-        let params = Params { accuracy, memory_bytes: most.min(left) };
+        let params = Params { accuracy, ..memory_params() };
         let question = bench.question(dimensions, connection);
         Ok(Job { bench, question, params, threads, floating_chosen })
     }

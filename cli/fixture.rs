@@ -5,8 +5,10 @@ use tiltgap_solver::{Assessment, Connection, Estimate, Factor, Factors, Ideal, L
 
 use crate::assess::{Job, Report};
 use crate::bench::Bench;
+use crate::ranges::Range;
 use crate::source::{Source, DEMO};
-use crate::tables::axis::{Span, Variable};
+use crate::table_job::TableJob;
+use crate::tables::axis::Variable;
 use crate::tables::fit::Campaign;
 use crate::tables::plan::{place, Plan};
 use crate::tables::quantity::{Quantity, Sample};
@@ -75,14 +77,21 @@ pub fn report() -> Report {
     }
 }
 
-/// A table over gap and tilt of the demo bench, made from an invented fringe that grows with the gap.
-pub fn table() -> Table {
-    let question = report().job.question;
-    let spans = [
-        Span { variable: Variable::Gap, from: 0.002, to: 0.008 },
-        Span { variable: Variable::Tilt, from: 0.0, to: 1f64.to_radians() },
-    ];
-    let space = Space::new(&question, Kind::Free, &spans).unwrap();
+/// A job for a table over gap and tilt of the demo bench.
+pub fn table_job() -> TableJob {
+    let Report { job, .. } = report();
+    let range = |variable, text: &str| Range::parse(variable, text).unwrap();
+    TableJob {
+        bench: job.bench,
+        question: job.question,
+        kind: Kind::Free,
+        ranges: vec![range(Variable::Gap, "2mm..8mm"), range(Variable::Tilt, "0deg..1deg")],
+        accuracy: 1e-4,
+    }
+}
+
+/// Samples for such a table, made from an invented fringe that grows with the gap.
+pub fn campaign(space: &Space) -> Campaign {
     let quantities = Quantity::all(true);
     let mut campaign = Campaign::new(Plan { nodes: vec![5, 4] });
     for point in campaign.missing() {
@@ -91,7 +100,7 @@ pub fn table() -> Table {
         let estimates = quantities
             .iter()
             .map(|q| {
-                let [carried, over] = q.carried(&lamella, &space);
+                let [carried, over] = q.carried(&lamella, space);
                 let excess = 7.0 * at[0] - 0.1 * at[1];
                 // A component that mirrors another must do so here as well.
                 let sign = if q.name() == "force_z" { -1.0 } else { 1.0 };
@@ -100,5 +109,13 @@ pub fn table() -> Table {
             .collect();
         campaign.samples.insert(point, Sample { estimates, level: 4, iterations: 17 });
     }
-    Table::new(space, quantities, &campaign)
+    campaign
+}
+
+/// The table that they make.
+pub fn table() -> Table {
+    let job = table_job();
+    let space = job.space().unwrap();
+    let campaign = campaign(&space);
+    Table::new(space, job.quantities(), &campaign)
 }

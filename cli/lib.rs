@@ -9,22 +9,29 @@ pub mod bench;
 pub mod caution;
 pub mod concise;
 pub mod document;
+pub mod effort;
 pub mod error;
 #[cfg(test)]
 mod fixture;
+pub mod interrupt;
 pub mod key_error;
 pub mod keys;
+pub mod lock;
 pub mod memory;
 pub mod nearest;
 pub mod progress;
 pub mod quantity;
+pub mod ranges;
 pub mod report_json;
 pub mod schema;
 pub mod screen;
 pub mod settings;
 pub mod source;
+pub mod store;
 pub mod table;
+pub mod table_job;
 pub mod tables;
+pub mod tabulate;
 
 use std::ffi::OsString;
 use std::io::{Read, Write};
@@ -101,6 +108,10 @@ fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(
                 screen::screen(&report)?
             }
         }
+        Command::Tabulate(arguments) => {
+            tabulate::tabulate(arguments, streams.stdin, streams.stderr, streams.terminal)?
+        }
+        Command::Join(arguments) => tabulate::join(arguments, streams.stderr, streams.terminal)?,
         Command::Schema => format!("{:#}\n", schema::bench_schema()),
         Command::Demo => source::DEMO.into(),
     };

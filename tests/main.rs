@@ -11,5 +11,6 @@ mod plates;
 mod random;
 mod squares;
 mod strips;
+mod tables;
 mod threads;
 mod wrench;

@@ -123,13 +123,13 @@ impl Campaign {
 
     /// Whether the interpolated factors are within the accuracy at the check points, and if not what to do.
     ///
-    /// What the numerical uncertainties of nodes and checks explain, no further node can mend: it counts as good once the
-    /// last node on every axis changed less than the accuracy.
+    /// What the numerical uncertainties of nodes and checks explain, no further node can mend: it counts as good once what
+    /// the last node on every axis changed is explained as well.
     pub fn verdict(&self, space: &Space, quantities: &[Quantity], accuracy: f64) -> Verdict {
         let fit = self.fit(space, quantities);
         let checks = self.checks(space, quantities);
         let count = factors(quantities);
-        let (mut worst, mut explained) = (0.0f64, true);
+        let (mut worst, mut explained, mut noise) = (0.0f64, true, accuracy);
         for (at, excesses) in &checks {
             let weights = fit.interpolant.weights(at);
             for (q, excess) in excesses.iter().enumerate().take(count) {
@@ -138,6 +138,7 @@ impl Campaign {
                 worst = worst.max(missed);
                 let pair = here.uncertainty.hypot(excess.uncertainty) / (1.0 + excess.value).abs();
                 explained &= missed <= accuracy.max(2.0 * pair);
+                noise = noise.max(2.0 * pair);
             }
         }
         if worst <= accuracy {
@@ -156,7 +157,7 @@ impl Campaign {
                 checks.iter().flat_map(|(at, _)| (0..count).map(|q| change(at, q))).fold(0.0, f64::max)
             })
             .collect();
-        if explained && changes.iter().all(|c| *c <= accuracy) {
+        if explained && changes.iter().all(|c| *c <= noise) {
             return Verdict::Good;
         }
         let growing = (0..changes.len()).filter(|k| self.plan.nodes[*k] < MOST_NODES);

@@ -169,7 +169,9 @@ pub fn described(variables: &[Variable], at: &Place) -> String {
         .zip(at)
         .map(|(variable, v)| match variable {
             Variable::Gap => {
-                let length = concise_si(*v, 0.0, "m").unwrap_or_else(|_| format!("{v} m"));
+                // Five digits tell the nodes of any axis apart.
+                let rounded: f64 = format!("{v:.4e}").parse().unwrap_or(*v);
+                let length = concise_si(rounded, 0.0, "m").unwrap_or_else(|_| format!("{v} m"));
                 format!("gap {length}")
             }
             other => format!("{} {:.5} deg", other.name(), v.to_degrees()),
