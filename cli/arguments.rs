@@ -2,7 +2,7 @@
 
 use std::path::PathBuf;
 
-use clap::{Args, Parser, Subcommand};
+use clap::{Args, Parser, Subcommand, ValueEnum};
 
 const EXIT_CODES: &str = "\
 Exit codes:
@@ -52,6 +52,27 @@ On three machines, and then together:
   tiltgap tabulate bench.json --gaps 2mm..8mm --part 1/3 -o share1.json     (2/3, 3/3 likewise)
   tiltgap join share1.json share2.json share3.json -o table.json";
 
+const ABOUT_APPLY: &str = "\
+The ideal formula for readings, and the same corrected with a table, with standard uncertainties
+(first order, JCGM 100): from the readings' own, and from the numerical and the interpolation part
+of the table.
+
+Readings are CSV (comma, semicolon or tab). Columns are found by their names, which end in a unit:
+gap_mm, tilt_deg, roll_deg, angle_mrad (in a table along the hinge), voltage_V, load_mg; with u_
+before it the standard uncertainty, u_gap_mm. The values that have a range in the table are needed,
+and the voltage. Other columns are passed through. A reading outside of the table is not corrected;
+the column \"problem\" says why, and the exit code is 1.
+
+load_mg: a mass at the centre of the upper plate. Its weight (standard gravity) times the arm over
+the corrected torque is load_ratio; without a hinge, its weight over the corrected force.";
+
+const APPLY_EXAMPLES: &str = "\
+Examples:
+  tiltgap apply table.json readings.csv -o corrected.csv
+  tiltgap apply table.json - < readings.csv
+  tiltgap apply table.json --at gap=3.2mm,tilt=0.4deg,voltage=250V
+  tiltgap apply table.json --at gap=3.2mm,u_gap=5um,tilt=0.4deg,voltage=250V --json";
+
 /// The whole command line.
 #[derive(Debug, Parser)]
 #[command(
@@ -79,6 +100,12 @@ pub enum Command {
     /// Put the shares of a table together.
     #[command(after_help = EXIT_CODES)]
     Join(JoinArguments),
+    /// Correct readings: the ideal formula times the factors of a table.
+    #[command(long_about = ABOUT_APPLY, after_help = EXIT_CODES, after_long_help = format!("{APPLY_EXAMPLES}\n\n{EXIT_CODES}"))]
+    Apply(ApplyArguments),
+    /// Show a table of correction factors.
+    #[command(after_help = EXIT_CODES)]
+    Table(TableArguments),
     /// Print the JSON Schema of the bench file, for editors.
     Schema,
     /// Print the demo bench file, to begin with.
@@ -229,6 +256,76 @@ pub struct JoinArguments {
     /// Threads for what the checks may ask for beyond the shares, 1 to 64 [default: all cores].
     #[arg(long, value_name = "N", allow_hyphen_values = true)]
     pub threads: Option<String>,
+}
+
+/// Arguments of `apply`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct ApplyArguments {
+    /// The table, from `tabulate` or `join`; `-` reads standard input.
+    #[arg(value_name = "TABLE")]
+    pub table: PathBuf,
+
+    /// Readings (CSV); `-` reads standard input.
+    #[arg(value_name = "READINGS", conflicts_with = "at")]
+    pub readings: Option<PathBuf>,
+
+    /// Where the corrected readings go [default: standard output].
+    #[arg(short, long, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+
+    /// One reading, for example gap=3.2mm,tilt=0.4deg,voltage=250V.
+    #[arg(long, value_name = "READING", allow_hyphen_values = true)]
+    pub at: Option<String>,
+
+    /// With --at: write JSON in SI units.
+    #[arg(long)]
+    pub json: bool,
+
+    /// The voltage of all readings, where they have no column for it.
+    #[arg(long, value_name = "VOLTAGE", allow_hyphen_values = true)]
+    pub voltage: Option<String>,
+
+    /// Threads to compute with, 1 to 64 [default: all cores].
+    #[arg(long, value_name = "N", allow_hyphen_values = true)]
+    pub threads: Option<String>,
+}
+
+/// Which factors are shown.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, ValueEnum)]
+pub enum Which {
+    /// Of charge and capacitance, k_C.
+    Capacitance,
+    /// Of the force, k_F.
+    Force,
+    /// Of the torque about the hinge, k_T.
+    Torque,
+    /// All of them.
+    #[default]
+    All,
+}
+
+/// Arguments of `table`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct TableArguments {
+    /// The table, from `tabulate` or `join`; `-` reads standard input.
+    #[arg(value_name = "TABLE")]
+    pub table: PathBuf,
+
+    /// Which factors.
+    #[arg(long, value_name = "QUANTITY", value_enum, default_value = "all")]
+    pub quantity: Which,
+
+    /// Show 100 (k - 1), what has to be added to the ideal value in per cent.
+    #[arg(long, conflicts_with_all = ["csv", "json"])]
+    pub percent: bool,
+
+    /// Write CSV.
+    #[arg(long, conflicts_with = "json")]
+    pub csv: bool,
+
+    /// Write JSON in SI units.
+    #[arg(long)]
+    pub json: bool,
 }
 
 #[cfg(test)]

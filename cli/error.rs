@@ -3,11 +3,13 @@
 use std::io;
 use std::path::PathBuf;
 
+use crate::apply::ApplyError;
 use crate::assess::JobError;
 use crate::bench::BenchError;
 use crate::concise::NotANumber;
 use crate::progress::grouped;
 use crate::ranges::RangeError;
+use crate::readings::ReadingsError;
 use crate::store::StoreError;
 use crate::tables::error::TableError;
 use crate::tabulate::TabulateError;
@@ -73,6 +75,25 @@ pub enum Error {
     /// A table cannot be read.
     #[error(transparent)]
     Store(#[from] StoreError),
+    /// The way the readings are given is at fault.
+    #[error(transparent)]
+    Apply(#[from] ApplyError),
+    /// The readings as a whole are at fault.
+    #[error(transparent)]
+    Readings(#[from] ReadingsError),
+    /// Some readings are at fault; the others are corrected.
+    #[error("{failed} of {all} readings could not be corrected, see above; the others are")]
+    Rows {
+        /// How many.
+        failed: usize,
+        /// Of how many.
+        all: usize,
+    },
+    /// The table has no such factor.
+    #[error(
+        "the bench of this table has no hinge, and so no factor of the torque; choose capacitance or force"
+    )]
+    NoTorque,
     /// One pose of a table failed.
     #[error("at {place}: {error}")]
     Pose {
@@ -186,7 +207,8 @@ impl Error {
             Error::Solver(Solver::Arrangement(_) | Solver::Question(_)) => BAD_INPUT,
             Error::Solver(Solver::NotConverged { .. } | Solver::AccuracyNotReached { .. }) => NOT_REACHED,
             Error::Pose { error, .. } => error.exit_code(),
-            Error::NotInterpolated { .. } => NOT_REACHED,
+            Error::NotInterpolated { .. } | Error::Rows { .. } => NOT_REACHED,
+            Error::Apply(_) | Error::Readings(_) | Error::NoTorque => BAD_INPUT,
             Error::Range(_) | Error::Tabulate(_) | Error::Table(_) | Error::Store(_) => BAD_INPUT,
             Error::Differs { .. } | Error::Occupied { .. } | Error::Locked { .. } => BAD_INPUT,
             Error::Interrupted { .. } => INTERRUPTED,

@@ -3,6 +3,7 @@
 //! Raw arguments ([`arguments`]) become a checked job ([`assess`]), the job becomes a report, the report becomes a
 //! table ([`screen`]) or JSON ([`report_json`]). The physics is in `tiltgap-solver`, the geometry in `tiltgap-meshes`.
 
+pub mod apply;
 pub mod arguments;
 pub mod assess;
 pub mod bench;
@@ -13,6 +14,7 @@ pub mod effort;
 pub mod error;
 #[cfg(test)]
 mod fixture;
+pub mod inputs;
 pub mod interrupt;
 pub mod key_error;
 pub mod keys;
@@ -22,10 +24,12 @@ pub mod nearest;
 pub mod progress;
 pub mod quantity;
 pub mod ranges;
+pub mod readings;
 pub mod report_json;
 pub mod schema;
 pub mod screen;
 pub mod settings;
+pub mod show;
 pub mod source;
 pub mod store;
 pub mod table;
@@ -112,6 +116,14 @@ fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(
             tabulate::tabulate(arguments, streams.stdin, streams.stderr, streams.terminal)?
         }
         Command::Join(arguments) => tabulate::join(arguments, streams.stderr, streams.terminal)?,
+        Command::Apply(arguments) => {
+            let outcome = apply::apply(arguments, streams.stdin)?;
+            write(streams.stdout, &outcome.text)?;
+            apply::tell(&outcome, streams.stderr);
+            let (failed, all) = outcome.failed;
+            return if failed == 0 { Ok(()) } else { Err(Error::Rows { failed, all }) };
+        }
+        Command::Table(arguments) => show::show(arguments, streams.stdin)?,
         Command::Schema => format!("{:#}\n", schema::bench_schema()),
         Command::Demo => source::DEMO.into(),
     };

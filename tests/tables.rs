@@ -4,7 +4,6 @@ use std::path::PathBuf;
 use std::time::Instant;
 
 use tiltgap::store::{Format, Stored};
-use tiltgap::tables::quantity::Quantity;
 use tiltgap::tables::table::Table;
 use tiltgap_solver::{assess, Params};
 
@@ -60,58 +59,87 @@ impl Numbers {
     }
 }
 
-/// Interpolated factors against direct assessments at random places: the part of them that is covered by two standard
-/// uncertainties of the pair, and the largest relative difference of a factor.
-fn against_direct(table: &Table, count: usize, accuracy: f64) -> (f64, f64) {
+/// What a comparison at random places says of one quantity.
+#[derive(Clone, Debug, Default)]
+struct Agreement {
+    name: String,
+    /// Part of the places covered by two standard uncertainties of the pair.
+    covered: f64,
+    /// Largest relative difference, and where.
+    worst: f64,
+    at: Vec<f64>,
+}
+
+/// Interpolated quantities against direct assessments at random places; those that vanish by symmetry are left out.
+fn against_direct(table: &Table, count: usize, accuracy: f64) -> Vec<Agreement> {
     let mut numbers = Numbers(20);
-    let (mut covered, mut all, mut worst) = (0, 0, 0.0f64);
+    let mut all: Vec<Agreement> =
+        table.quantities.iter().map(|q| Agreement { name: q.name(), ..Agreement::default() }).collect();
     for _ in 0..count {
-        let at: Vec<f64> = table
-            .space
-            .axes
-            .iter()
-            .map(|a| a.span.from + (a.span.to - a.span.from) * numbers.next())
-            .collect();
+        let axes = &table.space.axes;
+        let at: Vec<f64> =
+            axes.iter().map(|a| a.span.from + (a.span.to - a.span.from) * numbers.next()).collect();
         let question = table.space.question_at(&at);
         let params = Params { accuracy, ..Params::default() };
         let direct = assess(&question, &params, &mut |_| {}).unwrap();
         let size = question.arrangement.size_m();
-        for (q, known) in table.quantities.iter().zip(table.all(&at)) {
+        for ((q, known), agreement) in table.quantities.iter().zip(table.all(&at)).zip(&mut all) {
             let e = q.of(&direct, size);
             let pair = known.uncertainty().hypot(e.uncertainty);
             let difference = (known.value - e.value).abs();
-            use Quantity::{CapacitanceFactor, ForceFactor, TorqueFactor};
-            all += 1;
-            covered += usize::from(difference <= 2.0 * pair);
-            if matches!(q, CapacitanceFactor | ForceFactor | TorqueFactor) {
-                worst = worst.max(difference / e.value.abs());
+            agreement.covered += f64::from(difference <= 2.0 * pair) / count as f64;
+            if difference > agreement.worst * e.value.abs() {
+                agreement.worst = difference / e.value.abs();
+                agreement.at = at.clone();
             }
         }
     }
-    (covered as f64 / all as f64, worst)
+    all
 }
+
+/// The claim: 95 % of all numbers are covered, and every factor is within 2e-4 at the default accuracy.
+fn holds(all: &[Agreement]) -> Result<(), String> {
+    let covered = all.iter().map(|a| a.covered).sum::<f64>() / all.len() as f64;
+    let factors: Vec<&Agreement> = all.iter().filter(|a| a.name.starts_with("factor")).collect();
+    let good = covered >= 0.95 && factors.iter().all(|a| a.covered >= 0.95 && a.worst < 2e-4);
+    if good {
+        Ok(())
+    } else {
+        Err(format!("{all:#?}"))
+    }
+}
+
+const FREE: [&str; 4] = ["--gaps", "2mm..8mm", "--tilts", "0deg..1deg"];
+/// Down to where the free edge stands at 5 % of the gap: 55.7 um of 1.114 mm.
+const TO_5_PERCENT: [&str; 3] = ["--along-hinge", "--angles", "-19.2417mrad..10mrad"];
 
 #[test]
 fn interpolated_factors_agree_with_direct_ones() {
     let scratch = Scratch::new("direct");
-    let (table, _) = tabulated(&scratch, &["--gaps", "2mm..8mm", "--tilts", "0deg..1deg"]);
-    let (covered, worst) = against_direct(&table, 12, 1e-4);
-    assert!(covered >= 0.95 && worst < 2e-4, "{covered} {worst:e}");
+    let (table, _) = tabulated(&scratch, &FREE);
+    holds(&against_direct(&table, 12, 1e-4)).unwrap();
 }
 
-/// The whole of what is claimed, for `cargo test --release -- --ignored --nocapture`.
-#[test]
-#[ignore = "takes minutes; the same with fewer points is in the normal suite"]
-fn two_hundred_random_points() {
-    let hinge = "-19.24mrad..10mrad";
-    for (name, arguments) in [
-        ("free", &["--gaps", "2mm..8mm", "--tilts", "0deg..1deg"][..]),
-        ("along the hinge", &["--along-hinge", "--angles", hinge]),
-    ] {
-        let scratch = Scratch::new("two-hundred");
-        let (table, seconds) = tabulated(&scratch, arguments);
-        let (covered, worst) = against_direct(&table, 200, 1e-4);
-        eprintln!("{name}: table in {seconds:.1} s, {:.1} % covered, worst {worst:.1e}", 100.0 * covered);
-        assert!(covered >= 0.95 && worst < 2e-4, "{name}: {covered} {worst:e}");
+/// The whole of what is claimed, for `cargo test --release two_hundred -- --ignored --nocapture`.
+fn two_hundred_random_places(arguments: &[&str]) {
+    let scratch = Scratch::new(&format!("two-hundred-{}", arguments.len()));
+    let (table, seconds) = tabulated(&scratch, arguments);
+    let all = against_direct(&table, 200, 1e-4);
+    eprintln!("{arguments:?}: table in {seconds:.1} s");
+    for a in &all {
+        eprintln!("{:>16} {:5.1} % covered, worst {:.1e} at {:?}", a.name, 100.0 * a.covered, a.worst, a.at);
     }
+    holds(&all).unwrap();
+}
+
+#[test]
+#[ignore = "takes a minute; the same with fewer places is in the normal suite"]
+fn two_hundred_random_places_over_gap_and_tilt() {
+    two_hundred_random_places(&FREE);
+}
+
+#[test]
+#[ignore = "takes minutes: plates that nearly touch"]
+fn two_hundred_random_places_along_the_hinge() {
+    two_hundred_random_places(&TO_5_PERCENT);
 }

@@ -10,6 +10,10 @@ use tiltgap_solver::{Hinge, Question};
 /// Steps of the bisection that inverts a grading: more than a floating-point number has bits.
 const BISECTIONS: usize = 80;
 
+/// By which part of a range a value may miss its end: two ways of writing the same number differ by less, 0.008 m and
+/// 8 mm, or 1 deg and 17.45 mrad written with all digits.
+const ROUNDING: f64 = 1e-9;
+
 /// What varies along an axis.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
 pub enum Variable {
@@ -184,6 +188,13 @@ impl Axis {
             }
         }
         0.5 * (low + high)
+    }
+
+    /// Whether a value lies on the axis, but for rounding at the ends.
+    pub fn holds(&self, v: f64) -> bool {
+        let Span { from, to, .. } = self.span;
+        let slack = ROUNDING * (to - from);
+        (from - slack..=to + slack).contains(&v)
     }
 
     /// Whether the grading rises from end to end, so that every value has its place.

@@ -148,20 +148,17 @@ impl Space {
 
     /// The first value that lies outside of its axis, with the axis.
     pub fn outside(&self, at: &Place) -> Option<(usize, f64)> {
-        self.axes.iter().zip(at).enumerate().find_map(|(n, (axis, v))| {
-            let slack = ROUNDING * (axis.span.to - axis.span.from);
-            let inside = (axis.span.from - slack..=axis.span.to + slack).contains(v);
-            (!inside).then_some((n, *v))
-        })
+        self.axes
+            .iter()
+            .zip(at)
+            .enumerate()
+            .find(|(_, (axis, v))| !axis.holds(**v))
+            .map(|(n, (_, v))| (n, *v))
     }
 }
 
 /// Places along the beam's way at which the pose is looked at before anything is solved.
 const LOOKS: usize = 64;
-/// By which part of a range a value may miss its end: two ways of writing the same number differ by less, 0.008 m and
-/// 8 mm, or 1 deg and 17.45 mrad written with all digits.
-const ROUNDING: f64 = 1e-9;
-
 /// "gap 2 mm, tilt 1 deg".
 pub fn described(variables: &[Variable], at: &Place) -> String {
     let parts: Vec<String> = variables
