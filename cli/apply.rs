@@ -317,40 +317,44 @@ fn added(rules: &Rules, with_load: bool) -> Vec<String> {
     names
 }
 
-fn value(v: f64) -> String {
-    format!("{v:.8e}")
+/// Cells at the end of a row, written through one buffer.
+struct Cells<'a> {
+    record: &'a mut ByteRecord,
+    buffer: String,
 }
 
-fn uncertainty(v: f64) -> String {
-    format!("{v:.2e}")
-}
+impl Cells<'_> {
+    fn put(&mut self, cell: std::fmt::Arguments) {
+        self.buffer.clear();
+        // Writing to memory does not fail.
+        let _ = std::fmt::Write::write_fmt(&mut self.buffer, cell);
+        self.record.push_field(self.buffer.as_bytes());
+    }
 
-/// The cells that are added to a row.
-fn cells(corrected: &[Corrected], load: Option<Option<Load>>) -> Vec<String> {
-    let mut cells = Vec::new();
-    for c in corrected {
-        cells.extend([value(c.ideal), uncertainty(c.ideal_uncertainty)]);
+    fn value(&mut self, value: f64, uncertainty: f64) {
+        self.put(format_args!("{value:.8e}"));
+        self.put(format_args!("{uncertainty:.2e}"));
     }
-    for c in corrected {
-        cells.extend([format!("{:.8}", c.factor.value), uncertainty(c.factor.uncertainty())]);
+
+    fn factor(&mut self, value: f64, uncertainty: f64) {
+        self.put(format_args!("{value:.8}"));
+        self.put(format_args!("{uncertainty:.2e}"));
     }
-    for c in corrected {
-        cells.extend([value(c.corrected.value), uncertainty(c.uncertainty())]);
-    }
-    if let Some(load) = load {
-        match load {
-            Some(load) => {
-                cells.extend([value(load.weight_n), uncertainty(load.weight_uncertainty_n)]);
-                match load.ratio {
-                    Some((ratio, u)) => cells.extend([format!("{ratio:.8}"), uncertainty(u)]),
-                    None => cells.extend([String::new(), String::new()]),
-                }
+
+    /// The cells that are added to a row.
+    fn all(&mut self, corrected: &[Corrected], load: Option<&Load>) {
+        corrected.iter().for_each(|c| self.value(c.ideal, c.ideal_uncertainty));
+        corrected.iter().for_each(|c| self.factor(c.factor.value, c.factor.uncertainty()));
+        corrected.iter().for_each(|c| self.value(c.corrected.value, c.uncertainty()));
+        if let Some(load) = load {
+            self.value(load.weight_n, load.weight_uncertainty_n);
+            match load.ratio {
+                Some((ratio, uncertainty)) => self.factor(ratio, uncertainty),
+                None => (0..2).for_each(|_| self.record.push_field(b"")),
             }
-            None => cells.extend([const { String::new() }; 4]),
         }
+        self.record.push_field(b"");
     }
-    cells.push(String::new());
-    cells
 }
 
 /// Rows that one task corrects and writes.
@@ -379,8 +383,9 @@ fn corrected_rows(
         .par_chunks(CHUNK)
         .map(|rows| {
             let (mut out, mut all_wrong) = (writer(), Vec::with_capacity(rows.len()));
+            let (mut record, mut buffer_of_rows) = (ByteRecord::new(), String::new());
             for row in rows {
-                let mut record = ByteRecord::new();
+                record.clear();
                 let own = row.iter().map(Some).chain(std::iter::repeat(None)).take(readings.names.len());
                 own.for_each(|cell| record.push_field(cell.unwrap_or_default()));
                 let values = readings.values(row, rules).map(|mut values| {
@@ -392,8 +397,11 @@ fn corrected_rows(
                 let wrong = match values {
                     Ok(values) => {
                         let corrected = rules.table.correct(&rules.reading(&values));
-                        let load = with_load.then(|| load_of(&values, rules, &corrected));
-                        cells(&corrected, load).iter().for_each(|c| record.push_field(c.as_bytes()));
+                        let load = load_of(&values, rules, &corrected);
+                        let buffer = std::mem::take(&mut buffer_of_rows);
+                        let mut cells = Cells { record: &mut record, buffer };
+                        cells.all(&corrected, load.as_ref());
+                        buffer_of_rows = cells.buffer;
                         Vec::new()
                     }
                     Err(wrong) => {

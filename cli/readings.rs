@@ -3,6 +3,7 @@
 //! Comma, semicolon or tab; comments (#) and a byte-order mark are passed over; in a file with semicolons a decimal comma
 //! is understood. What is wrong with the file as a whole is an error, what is wrong with a cell belongs to its row.
 
+use std::borrow::Cow;
 use std::fmt;
 use std::path::PathBuf;
 
@@ -264,8 +265,13 @@ fn number(text: &str, delimiter: u8) -> Result<f64, String> {
     if text.is_empty() {
         return Err("the cell is empty; write a number (0 for an uncertainty that is not known)".into());
     }
-    let plain = text.replace('\u{2212}', "-");
-    let plain = if delimiter != b',' && !plain.contains('.') { plain.replacen(',', ".", 1) } else { plain };
+    let mut plain = Cow::Borrowed(text);
+    if plain.contains('\u{2212}') {
+        plain = plain.replace('\u{2212}', "-").into();
+    }
+    if delimiter != b',' && plain.contains(',') && !plain.contains('.') {
+        plain = plain.replacen(',', ".", 1).into();
+    }
     let digits = plain.bytes().any(|b| b.is_ascii_digit());
     match plain.parse::<f64>() {
         Ok(v) if v.is_finite() && digits => Ok(v),

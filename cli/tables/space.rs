@@ -81,7 +81,7 @@ impl Space {
         }
         let variables: Vec<Variable> = spans.iter().map(|s| s.variable).collect();
         for corner in &corners {
-            let pose = space.pose_of(&variables, corner)?;
+            let pose = space.pose_of(variables.iter().copied(), corner)?;
             let arrangement = Arrangement { pose, ..question.arrangement };
             if let Err(reason) = arrangement.check(tiltgap_meshes::Sideways::Smooth) {
                 return Err(TableError::Impossible { place: described(&variables, corner), reason });
@@ -103,7 +103,7 @@ impl Space {
         }
     }
 
-    fn pose_of(&self, variables: &[Variable], at: &Place) -> Result<Pose, TableError> {
+    fn pose_of(&self, variables: impl Iterator<Item = Variable>, at: &Place) -> Result<Pose, TableError> {
         let bench = &self.question.arrangement;
         match self.kind {
             Kind::AlongHinge => {
@@ -112,7 +112,7 @@ impl Space {
             }
             Kind::Free => {
                 let mut pose = bench.pose;
-                for (variable, v) in variables.iter().zip(at) {
+                for (variable, v) in variables.zip(at) {
                     match variable {
                         Variable::Gap => pose.gap_m = *v,
                         Variable::Tilt => pose.tilt_rad = *v,
@@ -128,8 +128,8 @@ impl Space {
     /// The question for the pose at a place: one value for each axis.
     pub fn question_at(&self, at: &Place) -> Question {
         assert_eq!(at.len(), self.axes.len(), "{at:?} is no place on {} axes", self.axes.len());
-        let variables: Vec<Variable> = self.axes.iter().map(|a| a.span.variable).collect();
-        let pose = self.pose_of(&variables, at).expect("the axes were checked when the space was made");
+        let variables = self.axes.iter().map(|a| a.span.variable);
+        let pose = self.pose_of(variables, at).expect("the axes were checked when the space was made");
         Question { arrangement: Arrangement { pose, ..self.question.arrangement }, ..self.question }
     }
 
