@@ -196,7 +196,7 @@ mod tests {
         for (n, point) in campaign.missing().into_iter().enumerate() {
             let at = place(&space.axes, &point);
             let lamella = space.lamella(&at);
-            let jump = if n % 2 == 0 { noise } else { -noise };
+            let jump = if n.is_multiple_of(2) { noise } else { -noise };
             let estimates = quantities
                 .iter()
                 .map(|q| {
