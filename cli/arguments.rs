@@ -7,7 +7,8 @@ use clap::{Args, Parser, Subcommand, ValueEnum};
 const EXIT_CODES: &str = "\
 Exit codes:
   0  good
-  1  the accuracy asked for was not reached, or the calculation did not converge
+  1  the accuracy asked for was not reached, the calculation did not converge, or readings could
+     not be corrected
   2  bad input: the bench, an option or the arrangement of the plates
   3  internal error
   130  stopped by Ctrl-C; what was done is kept";

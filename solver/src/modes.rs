@@ -128,7 +128,7 @@ impl Modes {
     /// The transform on the nodes from `from` to `to`, both included.
     pub fn on(&self, from: usize, to: usize) -> Transform {
         let vectors = self.transform.vectors().slice_axis(Direction(0), Slice::from(from..=to)).to_owned();
-        let centred = from + to == self.len() - 1 && (from + to) % 2 == 0;
+        let centred = from + to == self.len() - 1 && (from + to).is_multiple_of(2);
         Transform::new(vectors, self.symmetric && centred)
     }
 }
