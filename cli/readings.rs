@@ -216,8 +216,9 @@ impl Readings {
             columns.push(Column { index, name: name.clone(), entry, unit });
         }
         for item in rules.needed() {
-            let there = columns.iter().any(|c| c.entry == Entry { item, uncertainty: false });
-            if !there && !(item == Item::Voltage && voltage_given) {
+            let known = columns.iter().any(|c| c.entry == Entry { item, uncertainty: false })
+                || (item == Item::Voltage && voltage_given);
+            if !known {
                 let otherwise =
                     if item == Item::Voltage { ", or give --voltage for all readings" } else { "" };
                 let (name, example) = (item.name(), item.column());
