@@ -129,7 +129,7 @@ pub enum Error {
         here: String,
     },
     /// Something is in the way of the output.
-    #[error("{path:?} is left as it is, since it is in the way: {error}; give another -o, or --restart if it was a table")]
+    #[error("{path:?} is left as it is, but in the way: {error}; give another -o, or remove the file")]
     Occupied {
         /// Which file.
         path: PathBuf,

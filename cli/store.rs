@@ -26,6 +26,9 @@ const VERSION: u64 = 1;
 /// Longest file that is read, in bytes: a table with three long axes has a hundredth of that.
 const LONGEST: u64 = 256 << 20;
 
+/// What is added to the name of a file while it is written.
+pub const TEMPORARY: &str = ".tmp";
+
 /// What a file is.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Format {
@@ -250,7 +253,7 @@ fn laid_out(map: &Map<String, Value>) -> String {
 /// # Errors
 /// What the system says, with the path.
 pub fn save(path: &Path, text: &str) -> Result<(), Error> {
-    let temporary = beside(path, ".tmp");
+    let temporary = beside(path, TEMPORARY);
     let written = File::create(&temporary)
         .and_then(|mut file| file.write_all(text.as_bytes()).and_then(|()| file.sync_data()))
         .and_then(|()| std::fs::rename(&temporary, path));

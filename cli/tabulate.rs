@@ -15,7 +15,7 @@ use crate::error::Error;
 use crate::interrupt;
 use crate::lock::Lock;
 use crate::ranges::Range;
-use crate::store::{beside, save, text, Format, Part, StoreError, Stored};
+use crate::store::{beside, save, text, Format, Part, StoreError, Stored, TEMPORARY};
 use crate::table_job::{difference, TableJob};
 use crate::tables::axis::Variable;
 use crate::tables::fit::Campaign;
@@ -300,8 +300,9 @@ fn make(made: Made, stderr: &mut (dyn Write + Send), terminal: bool) -> Result<S
         Output::Stdout => Ok(content),
         Output::File(path, _lock) => {
             save(&path, &content)?;
-            // What cannot be removed is found finished the next time.
+            // What cannot be removed is found finished the next time. A save that was cut short left the second.
             let _ = std::fs::remove_file(&progress);
+            let _ = std::fs::remove_file(beside(&progress, TEMPORARY));
             Ok(summary(&path, &job, campaign, table.as_ref()))
         }
     }

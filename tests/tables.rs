@@ -234,8 +234,9 @@ fn a_run_that_is_killed_again_and_again_gives_the_same_bytes() {
     }
     assert!(start().wait().unwrap().success());
     assert_eq!(bytes(&path), *whole, "after {killed} kills");
-    // The temporary file of a save that was cut short may be left behind, progress and lock may not.
-    assert!(!std::fs::exists(format!("{path}.progress")).unwrap());
+    for suffix in [".progress", ".progress.tmp", ".lock", ".tmp"] {
+        assert!(!std::fs::exists(format!("{path}{suffix}")).unwrap(), "{suffix}");
+    }
 }
 
 #[test]
