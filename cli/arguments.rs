@@ -7,9 +7,11 @@ use clap::{Args, Parser, Subcommand, ValueEnum};
 const EXIT_CODES: &str = "\
 Exit codes:
   0  good
-  1  the accuracy asked for was not reached, or the calculation did not converge
+  1  the accuracy asked for was not reached, the calculation did not converge, or readings could
+     not be corrected
   2  bad input: the bench, an option or the arrangement of the plates
-  3  internal error";
+  3  internal error
+  130  stopped by Ctrl-C; what was done is kept";
 
 const ABOUT_ASSESS: &str = "\
 Charge, force and hinge torque of a bench, with wedge (tilt) and fringe, beside the ideal formula.
@@ -43,6 +45,48 @@ Examples:
   tiltgap draw bench.json --what charge --per-metre -o charge.svg
   tiltgap draw bench.json --what field -o field.vts      potential and field, for other viewers
   tiltgap draw --what potential -o - --format svg        to standard output";
+const ABOUT_TABULATE: &str = "\
+Correction factors of a bench as a table: solved at nodes that the program chooses, interpolated in
+between, and checked at points that are no nodes until the interpolated factors are within the
+accuracy.
+
+Two kinds of table. Free: gap, tilt and roll vary independently; what is given no range keeps the
+value of the bench. Along the hinge: the beam turns about its hinge and takes the plate along; the
+bench's gap and shift are those of beam angle 0, where the plates are parallel, and its tilt is not
+used.
+
+Every solved point is saved at once (in FILE.progress). A run that was ended, however it was ended,
+goes on from there with the same command.";
+
+const TABULATE_EXAMPLES: &str = "\
+Examples:
+  tiltgap tabulate bench.json --gaps 2mm..8mm --tilts 0deg..1deg -o table.json
+  tiltgap tabulate bench.json --gaps 2mm..8mm/13 --accuracy 1e-5 -o fine.json
+  tiltgap tabulate bench.json --along-hinge --angles -15mrad..10mrad -o beam.json
+On three machines, and then together:
+  tiltgap tabulate bench.json --gaps 2mm..8mm --part 1/3 -o share1.json     (2/3, 3/3 likewise)
+  tiltgap join share1.json share2.json share3.json -o table.json";
+
+const ABOUT_APPLY: &str = "\
+The ideal formula for readings, and the same corrected with a table, with standard uncertainties
+(first order, JCGM 100): from the readings' own, and from the numerical and the interpolation part
+of the table.
+
+Readings are CSV (comma, semicolon or tab). Columns are found by their names, which end in a unit:
+gap_mm, tilt_deg, roll_deg, angle_mrad (in a table along the hinge), voltage_V, load_mg; with u_
+before it the standard uncertainty, u_gap_mm. The values that have a range in the table are needed,
+and the voltage. Other columns are passed through. A reading outside of the table is not corrected;
+the column \"problem\" says why, and the exit code is 1.
+
+load_mg: a mass at the centre of the upper plate. Its weight (standard gravity) times the arm over
+the corrected torque is load_ratio; without a hinge, its weight over the corrected force.";
+
+const APPLY_EXAMPLES: &str = "\
+Examples:
+  tiltgap apply table.json readings.csv -o corrected.csv
+  tiltgap apply table.json - < readings.csv
+  tiltgap apply table.json --at gap=3.2mm,tilt=0.4deg,voltage=250V
+  tiltgap apply table.json --at gap=3.2mm,u_gap=5um,tilt=0.4deg,voltage=250V --json";
 
 /// The whole command line.
 #[derive(Debug, Parser)]
@@ -68,6 +112,18 @@ pub enum Command {
     /// A picture of a bench: potential, field lines or charge density.
     #[command(long_about = ABOUT_DRAW, after_help = EXIT_CODES, after_long_help = format!("{DRAW_EXAMPLES}\n\n{EXIT_CODES}"))]
     Draw(DrawArguments),
+    /// Make a table of correction factors over gap and tilt, or along the beam's way.
+    #[command(long_about = ABOUT_TABULATE, after_help = EXIT_CODES, after_long_help = format!("{TABULATE_EXAMPLES}\n\n{EXIT_CODES}"))]
+    Tabulate(TabulateArguments),
+    /// Put the shares of a table together.
+    #[command(after_help = EXIT_CODES)]
+    Join(JoinArguments),
+    /// Correct readings: the ideal formula times the factors of a table.
+    #[command(long_about = ABOUT_APPLY, after_help = EXIT_CODES, after_long_help = format!("{APPLY_EXAMPLES}\n\n{EXIT_CODES}"))]
+    Apply(ApplyArguments),
+    /// Show a table of correction factors.
+    #[command(after_help = EXIT_CODES)]
+    Table(TableArguments),
     /// Print the JSON Schema of the bench file, for editors.
     Schema,
     /// Print the demo bench file, to begin with.
@@ -140,6 +196,160 @@ pub struct AssessArguments {
     pub accuracy: Option<String>,
 
     /// Write JSON in SI units instead of tables.
+    #[arg(long)]
+    pub json: bool,
+}
+
+/// Arguments of `tabulate`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct TabulateArguments {
+    /// Bench file (JSON); `-` reads standard input. Without it: the built-in demo bench.
+    #[arg(value_name = "BENCH")]
+    pub bench: Option<PathBuf>,
+
+    /// Range of the gap, for example 2mm..8mm.
+    ///
+    /// With /7 behind it the table is printed for 7 gaps, evenly spaced, ends included. The nodes are
+    /// the program's business.
+    #[arg(long, value_name = "FROM..TO", allow_hyphen_values = true)]
+    pub gaps: Option<String>,
+
+    /// Range of the tilt, for example 0deg..1deg.
+    #[arg(long, value_name = "FROM..TO", allow_hyphen_values = true)]
+    pub tilts: Option<String>,
+
+    /// Range of the roll, for example -0.2deg..0.2deg.
+    #[arg(long, value_name = "FROM..TO", allow_hyphen_values = true)]
+    pub rolls: Option<String>,
+
+    /// A table along the way of the beam about its hinge; give --angles.
+    #[arg(long)]
+    pub along_hinge: bool,
+
+    /// Range of the beam angle, for example -15mrad..10mrad; positive raises the free edge.
+    #[arg(long, value_name = "FROM..TO", allow_hyphen_values = true)]
+    pub angles: Option<String>,
+
+    /// Wiring, grounded or floating [default: that of the bench].
+    #[arg(long, value_name = "WIRING", allow_hyphen_values = true)]
+    pub connection: Option<String>,
+
+    /// Accuracy of the factors [default: 1e-4].
+    ///
+    /// The largest relative standard uncertainty at a node, and the largest error of the interpolation
+    /// at a check point.
+    #[arg(long, value_name = "NUMBER", allow_hyphen_values = true)]
+    pub accuracy: Option<String>,
+
+    /// Cross-section of very wide plates (2-D): everything per metre of width.
+    #[arg(long)]
+    pub per_metre: bool,
+
+    /// Where the table goes [default: table.json]; `-` is standard output, where nothing is resumed.
+    #[arg(short, long, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+
+    /// Compute share I of N, to be put together with `join`.
+    #[arg(long, value_name = "I/N", allow_hyphen_values = true)]
+    pub part: Option<String>,
+
+    /// Begin anew, over a table or a progress made with other settings.
+    #[arg(long)]
+    pub restart: bool,
+
+    /// Threads to compute with, 1 to 64 [default: all cores].
+    ///
+    /// The table does not depend on it, to the last byte.
+    #[arg(long, value_name = "N", allow_hyphen_values = true)]
+    pub threads: Option<String>,
+}
+
+/// Arguments of `join`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct JoinArguments {
+    /// All shares of one table, in any order.
+    #[arg(value_name = "SHARE", required = true)]
+    pub shares: Vec<PathBuf>,
+
+    /// Where the table goes [default: table.json]; `-` is standard output.
+    #[arg(short, long, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+
+    /// Begin anew, over a table made with other settings.
+    #[arg(long)]
+    pub restart: bool,
+
+    /// Threads for what the checks may ask for beyond the shares, 1 to 64 [default: all cores].
+    #[arg(long, value_name = "N", allow_hyphen_values = true)]
+    pub threads: Option<String>,
+}
+
+/// Arguments of `apply`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct ApplyArguments {
+    /// The table, from `tabulate` or `join`; `-` reads standard input.
+    #[arg(value_name = "TABLE")]
+    pub table: PathBuf,
+
+    /// Readings (CSV); `-` reads standard input.
+    #[arg(value_name = "READINGS", conflicts_with = "at")]
+    pub readings: Option<PathBuf>,
+
+    /// Where the corrected readings go [default: standard output].
+    #[arg(short, long, value_name = "FILE")]
+    pub output: Option<PathBuf>,
+
+    /// One reading, for example gap=3.2mm,tilt=0.4deg,voltage=250V.
+    #[arg(long, value_name = "READING", allow_hyphen_values = true)]
+    pub at: Option<String>,
+
+    /// With --at: write JSON in SI units.
+    #[arg(long)]
+    pub json: bool,
+
+    /// The voltage of all readings, where they have no column for it.
+    #[arg(long, value_name = "VOLTAGE", allow_hyphen_values = true)]
+    pub voltage: Option<String>,
+
+    /// Threads to compute with, 1 to 64 [default: all cores].
+    #[arg(long, value_name = "N", allow_hyphen_values = true)]
+    pub threads: Option<String>,
+}
+
+/// Which factors are shown.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, ValueEnum)]
+pub enum Which {
+    /// Of charge and capacitance, k_C.
+    Capacitance,
+    /// Of the force, k_F.
+    Force,
+    /// Of the torque about the hinge, k_T.
+    Torque,
+    /// All of them.
+    #[default]
+    All,
+}
+
+/// Arguments of `table`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct TableArguments {
+    /// The table, from `tabulate` or `join`; `-` reads standard input.
+    #[arg(value_name = "TABLE")]
+    pub table: PathBuf,
+
+    /// Which factors.
+    #[arg(long, value_name = "QUANTITY", value_enum, default_value = "all")]
+    pub quantity: Which,
+
+    /// Show 100 (k - 1), what has to be added to the ideal value in per cent.
+    #[arg(long, conflicts_with_all = ["csv", "json"])]
+    pub percent: bool,
+
+    /// Write CSV.
+    #[arg(long, conflicts_with = "json")]
+    pub csv: bool,
+
+    /// Write JSON in SI units.
     #[arg(long)]
     pub json: bool,
 }

@@ -109,7 +109,11 @@ fn accuracy(text: Option<&str>) -> Result<f64, JobError> {
     Ok(value)
 }
 
-fn threads(text: Option<&str>) -> Result<usize, JobError> {
+/// The threads to compute with: those asked for, or one for each core.
+///
+/// # Errors
+/// [`JobError::Threads`].
+pub fn threads(text: Option<&str>) -> Result<usize, JobError> {
     let Some(text) = text else {
         return Ok(std::thread::available_parallelism().map_or(1, usize::from).min(MOST_THREADS));
     };

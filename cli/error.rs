@@ -1,7 +1,9 @@
 //! What can go wrong in a run, and the exit code that says so.
 
 use std::io;
+use std::path::PathBuf;
 
+use crate::apply::ApplyError;
 use crate::assess::JobError;
 use crate::bench::BenchError;
 use crate::concise::NotANumber;
@@ -9,6 +11,11 @@ use crate::draw::output::OutputError;
 use crate::draw::render::RenderError;
 use crate::draw::DrawError;
 use crate::progress::grouped;
+use crate::ranges::RangeError;
+use crate::readings::ReadingsError;
+use crate::store::StoreError;
+use crate::tables::error::TableError;
+use crate::tabulate::TabulateError;
 
 /// Exit code of a run that did what was asked for.
 pub const GOOD: u8 = 0;
@@ -18,6 +25,8 @@ pub const NOT_REACHED: u8 = 1;
 pub const BAD_INPUT: u8 = 2;
 /// A mistake in the program, or a system that does not take the output.
 pub const INTERNAL: u8 = 3;
+/// Long work was asked to stop: 128 and the number of the signal, as shells have it.
+pub const INTERRUPTED: u8 = 130;
 
 /// An accuracy that is suggested lies above what was reached by this factor: another accuracy means another solver
 /// tolerance, and the same levels shall meet it.
@@ -66,6 +75,110 @@ pub enum Error {
     /// The output could not be written.
     #[error("the output cannot be written: {0}")]
     Output(#[from] io::Error),
+    /// A range is at fault.
+    #[error(transparent)]
+    Range(#[from] RangeError),
+    /// The options of a table are at fault, or shares that do not belong together.
+    #[error(transparent)]
+    Tabulate(#[from] TabulateError),
+    /// No table over such ranges.
+    #[error(transparent)]
+    Table(#[from] TableError),
+    /// A table cannot be read.
+    #[error(transparent)]
+    Store(#[from] StoreError),
+    /// The way the readings are given is at fault.
+    #[error(transparent)]
+    Apply(#[from] ApplyError),
+    /// The readings as a whole are at fault.
+    #[error(transparent)]
+    Readings(#[from] ReadingsError),
+    /// Some readings are at fault; the others are corrected.
+    #[error("{failed} of {all} readings could not be corrected, see above; the others are")]
+    Rows {
+        /// How many.
+        failed: usize,
+        /// Of how many.
+        all: usize,
+    },
+    /// The table has no such factor.
+    #[error(
+        "the bench of this table has no hinge, and so no factor of the torque; choose capacitance or force"
+    )]
+    NoTorque,
+    /// One pose of a table failed.
+    #[error("at {place}: {error}")]
+    Pose {
+        /// Which.
+        place: String,
+        /// Why.
+        error: Box<Error>,
+    },
+    /// The interpolation does not come within the accuracy.
+    #[error(
+        "the accuracy {asked:e} was not reached: with as many nodes as there may be the interpolated factors are still up \
+         to {worst:.1e} off at the check points; narrow the ranges or ask for less"
+    )]
+    NotInterpolated {
+        /// What was asked for.
+        asked: f64,
+        /// The largest relative error seen.
+        worst: f64,
+    },
+    /// A file that was made for something else.
+    #[error(
+        "{path:?} was made with other settings: {key} is {there} there and {here} here; give another -o, or --restart to \
+         make it anew"
+    )]
+    Differs {
+        /// Which file.
+        path: PathBuf,
+        /// Where the difference is.
+        key: String,
+        /// The value in the file.
+        there: String,
+        /// The value asked for.
+        here: String,
+    },
+    /// Something is in the way of the output.
+    #[error("{path:?} is left as it is, but in the way: {error}; give another -o, or remove the file")]
+    Occupied {
+        /// Which file.
+        path: PathBuf,
+        /// What is wrong with it.
+        error: Box<StoreError>,
+    },
+    /// Another process is at work on the same output.
+    #[error("another tiltgap is at work on {output:?}; wait for it, or give another -o")]
+    Locked {
+        /// Which.
+        output: PathBuf,
+    },
+    /// A file could not be written.
+    #[error("{path:?} cannot be written: {error}; check the directory and the space on the disk")]
+    Save {
+        /// Which.
+        path: PathBuf,
+        /// What the system says.
+        error: io::Error,
+    },
+    /// Ctrl-C.
+    #[error("stopped after {done} of {all} points; {}", resume(.progress))]
+    Interrupted {
+        /// Points solved in this run.
+        done: usize,
+        /// Points that were to be solved.
+        all: usize,
+        /// Where they are kept.
+        progress: Option<PathBuf>,
+    },
+}
+
+fn resume(progress: &Option<PathBuf>) -> String {
+    match progress {
+        Some(path) => format!("they are kept in {path:?}, and the same command goes on from there"),
+        None => "they are lost, since the table was to go to standard output".into(),
+    }
 }
 
 /// What the solver says, with the options of the command line in place of its settings.
@@ -106,12 +219,19 @@ impl Error {
             Error::File(OutputError::Name { .. }) => BAD_INPUT,
             Error::Solver(Solver::Arrangement(_) | Solver::Question(_)) => BAD_INPUT,
             Error::Solver(Solver::NotConverged { .. } | Solver::AccuracyNotReached { .. }) => NOT_REACHED,
+            Error::Pose { error, .. } => error.exit_code(),
+            Error::NotInterpolated { .. } | Error::Rows { .. } => NOT_REACHED,
+            Error::Apply(_) | Error::Readings(_) | Error::NoTorque => BAD_INPUT,
+            Error::Range(_) | Error::Tabulate(_) | Error::Table(_) | Error::Store(_) => BAD_INPUT,
+            Error::Differs { .. } | Error::Occupied { .. } | Error::Locked { .. } => BAD_INPUT,
+            Error::Interrupted { .. } => INTERRUPTED,
             Error::Output(error) if error.kind() == io::ErrorKind::BrokenPipe => GOOD,
             Error::NotFinite { .. }
             | Error::NotShown(_)
             | Error::Render(_)
             | Error::File(OutputError::System { .. })
             | Error::Threads { .. }
+            | Error::Save { .. }
             | Error::Output(_) => INTERNAL,
         }
     }

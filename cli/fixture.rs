@@ -1,11 +1,19 @@
-//! A report with round numbers, for the tests of what is made of a report.
+//! A report with round numbers and a table with an invented fringe, for the tests of what is made of them.
 
 use tiltgap_meshes::Dimensions;
 use tiltgap_solver::{Assessment, Connection, Estimate, Factor, Factors, Ideal, LevelReport, Params};
 
 use crate::assess::{Job, Report};
 use crate::bench::Bench;
+use crate::ranges::Range;
 use crate::source::{Source, DEMO};
+use crate::table_job::TableJob;
+use crate::tables::axis::Variable;
+use crate::tables::fit::Campaign;
+use crate::tables::plan::{place, Plan};
+use crate::tables::quantity::{Quantity, Sample};
+use crate::tables::space::{Kind, Space};
+use crate::tables::table::Table;
 
 fn estimate(value: f64, uncertainty: f64) -> Estimate {
     Estimate { value, uncertainty }
@@ -68,4 +76,47 @@ pub fn report() -> Report {
         seconds: 0.31,
         peak_memory_bytes: Some(46_500_000),
     }
+}
+
+/// A job for a table over gap and tilt of the demo bench.
+pub fn table_job() -> TableJob {
+    let Report { job, .. } = report();
+    let range = |variable, text: &str| Range::parse(variable, text).unwrap();
+    TableJob {
+        bench: job.bench,
+        question: job.question,
+        kind: Kind::Free,
+        ranges: vec![range(Variable::Gap, "2mm..8mm"), range(Variable::Tilt, "0deg..1deg")],
+        accuracy: 1e-4,
+    }
+}
+
+/// Samples for such a table, made from an invented fringe that grows with the gap.
+pub fn campaign(space: &Space) -> Campaign {
+    let quantities = Quantity::all(true);
+    let mut campaign = Campaign::new(Plan { nodes: vec![5, 4] });
+    for point in campaign.missing() {
+        let at = place(&space.axes, &point);
+        let lamella = space.lamella(&at);
+        let estimates = quantities
+            .iter()
+            .map(|q| {
+                let [carried, over] = q.carried(&lamella, space);
+                let excess = 7.0 * at[0] - 0.1 * at[1];
+                // A component that mirrors another must do so here as well.
+                let sign = if q.name() == "force_z" { -1.0 } else { 1.0 };
+                estimate(carried + sign * over * excess, 3e-5)
+            })
+            .collect();
+        campaign.samples.insert(point, Sample { estimates, level: 4, iterations: 17 });
+    }
+    campaign
+}
+
+/// The table that they make.
+pub fn table() -> Table {
+    let job = table_job();
+    let space = job.space().unwrap();
+    let campaign = campaign(&space);
+    Table::new(space, job.quantities(), &campaign)
 }

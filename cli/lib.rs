@@ -4,6 +4,7 @@
 //! table ([`screen`]) or JSON ([`report_json`]);
 //! [`draw`] makes pictures. The physics is in `tiltgap-solver`, the geometry in `tiltgap-meshes`.
 
+pub mod apply;
 pub mod arguments;
 pub mod assess;
 pub mod bench;
@@ -11,21 +12,32 @@ pub mod caution;
 pub mod concise;
 pub mod document;
 pub mod draw;
+pub mod effort;
 pub mod error;
 #[cfg(test)]
 mod fixture;
+pub mod inputs;
+pub mod interrupt;
 pub mod key_error;
 pub mod keys;
+pub mod lock;
 pub mod memory;
 pub mod nearest;
 pub mod progress;
 pub mod quantity;
+pub mod ranges;
+pub mod readings;
 pub mod report_json;
 pub mod schema;
 pub mod screen;
 pub mod settings;
+pub mod show;
 pub mod source;
+pub mod store;
 pub mod table;
+pub mod table_job;
+pub mod tables;
+pub mod tabulate;
 
 use std::ffi::OsString;
 use std::io::{Read, Write};
@@ -106,6 +118,18 @@ fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(
             let job = draw::Job::new(arguments, streams.stdin)?;
             return job.run(streams.stdout, streams.stderr, streams.terminal);
         }
+        Command::Tabulate(arguments) => {
+            tabulate::tabulate(arguments, streams.stdin, streams.stderr, streams.terminal)?
+        }
+        Command::Join(arguments) => tabulate::join(arguments, streams.stderr, streams.terminal)?,
+        Command::Apply(arguments) => {
+            let outcome = apply::apply(arguments, streams.stdin)?;
+            write(streams.stdout, &outcome.text)?;
+            apply::tell(&outcome, streams.stderr);
+            let (failed, all) = outcome.failed;
+            return if failed == 0 { Ok(()) } else { Err(Error::Rows { failed, all }) };
+        }
+        Command::Table(arguments) => show::show(arguments, streams.stdin)?,
         Command::Schema => format!("{:#}\n", schema::bench_schema()),
         Command::Demo => source::DEMO.into(),
     };

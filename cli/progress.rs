@@ -1,6 +1,6 @@
 //! One line on the terminal that says how far the work is, rewritten in place and gone at the end.
 //!
-//! Off a terminal nothing is written. What cannot be written is not missed.
+//! Off a terminal only what is meant to stay is written. What cannot be written is not missed.
 
 use std::io::Write;
 use std::time::{Duration, Instant};
@@ -10,13 +10,59 @@ use tiltgap_solver::Progress;
 /// Shortest time between two lines.
 const PAUSE: Duration = Duration::from_millis(100);
 
-/// The line.
-pub struct ProgressLine<'a> {
+/// A line that is rewritten in place.
+pub struct Line<'a> {
     out: &'a mut (dyn Write + Send),
     shown: bool,
-    nodes: usize,
     last: Option<Instant>,
     width: usize,
+}
+
+impl<'a> Line<'a> {
+    /// A line on `out`, silent unless that is a terminal.
+    pub fn new(out: &'a mut (dyn Write + Send), terminal: bool) -> Self {
+        Line { out, shown: terminal, last: None, width: 0 }
+    }
+
+    /// Whether there is a terminal to show it.
+    pub fn is_shown(&self) -> bool {
+        self.shown
+    }
+
+    /// The next text is shown even if the one before is fresh.
+    fn hurry(&mut self) {
+        self.last = None;
+    }
+
+    /// Shows a text, unless the one before is fresh.
+    pub fn write(&mut self, text: &str) {
+        if !self.shown || self.last.is_some_and(|t| t.elapsed() < PAUSE) {
+            return;
+        }
+        self.last = Some(Instant::now());
+        let width = self.width;
+        self.width = text.chars().count();
+        let _ = write!(self.out, "\r{text:<width$}").and_then(|()| self.out.flush());
+    }
+
+    /// Writes a line that stays, for where there is no terminal.
+    pub fn plain(&mut self, text: &str) {
+        let _ = writeln!(self.out, "{text}").and_then(|()| self.out.flush());
+    }
+}
+
+impl Drop for Line<'_> {
+    fn drop(&mut self) {
+        if self.width > 0 {
+            let _ = write!(self.out, "\r{:width$}\r", "", width = self.width).and_then(|()| self.out.flush());
+        }
+    }
+}
+
+/// The progress of an assessment.
+pub struct ProgressLine<'a> {
+    line: Line<'a>,
+    nodes: usize,
 }
 
 /// A whole number in groups of three digits: 153 957.
@@ -24,7 +70,7 @@ pub fn grouped(n: usize) -> String {
     let digits = n.to_string();
     let mut text = String::new();
     for (at, digit) in digits.chars().enumerate() {
-        if at > 0 && (digits.len() - at) % 3 == 0 {
+        if at > 0 && (digits.len() - at).is_multiple_of(3) {
             text.push(' ');
         }
         text.push(digit);
@@ -35,7 +81,7 @@ pub fn grouped(n: usize) -> String {
 impl<'a> ProgressLine<'a> {
     /// A line on `out`, silent unless that is a terminal.
     pub fn new(out: &'a mut (dyn Write + Send), terminal: bool) -> Self {
-        ProgressLine { out, shown: terminal, nodes: 0, last: None, width: 0 }
+        ProgressLine { line: Line::new(out, terminal), nodes: 0 }
     }
 
     /// Shows a piece of news, unless the one before is fresh.
@@ -43,28 +89,14 @@ impl<'a> ProgressLine<'a> {
         let text = match news {
             Progress::Level { q, nodes } => {
                 self.nodes = nodes;
-                self.last = None;
+                self.line.hurry();
                 format!("level {q}: {} nodes", grouped(nodes))
             }
             Progress::Iteration { q, iteration, error } => {
                 format!("level {q}: {} nodes, iteration {iteration}, error {error:.0e}", grouped(self.nodes))
             }
         };
-        if !self.shown || self.last.is_some_and(|t| t.elapsed() < PAUSE) {
-            return;
-        }
-        self.last = Some(Instant::now());
-        let width = self.width;
-        self.width = text.chars().count();
-        let _ = write!(self.out, "\r{text:<width$}").and_then(|()| self.out.flush());
-    }
-}
-
-impl Drop for ProgressLine<'_> {
-    fn drop(&mut self) {
-        if self.width > 0 {
-            let _ = write!(self.out, "\r{:width$}\r", "", width = self.width).and_then(|()| self.out.flush());
-        }
+        self.line.write(&text);
     }
 }
 

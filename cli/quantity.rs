@@ -14,6 +14,8 @@ pub enum Dimension {
     Angle,
     /// Volts inside.
     Voltage,
+    /// Kilograms inside.
+    Mass,
 }
 
 /// A unit: the SI value is the number times the first factor over the second. Two exact integers round once less than
@@ -43,6 +45,12 @@ const ANGLES: [Unit; 4] = [
     unit(&["arcmin"], std::f64::consts::PI, 180.0 * 60.0),
 ];
 const VOLTAGES: [Unit; 2] = [unit(&["V"], 1.0, 1.0), unit(&["kV"], 1e3, 1.0)];
+const MASSES: [Unit; 4] = [
+    unit(&["kg"], 1.0, 1.0),
+    unit(&["g"], 1.0, 1e3),
+    unit(&["mg"], 1.0, 1e6),
+    unit(&["ug", "µg", "μg"], 1.0, 1e9),
+];
 
 impl Dimension {
     fn units(self) -> &'static [Unit] {
@@ -50,6 +58,7 @@ impl Dimension {
             Dimension::Length => &LENGTHS,
             Dimension::Angle => &ANGLES,
             Dimension::Voltage => &VOLTAGES,
+            Dimension::Mass => &MASSES,
         }
     }
 
@@ -71,17 +80,32 @@ impl Dimension {
             Dimension::Length => "a length",
             Dimension::Angle => "an angle",
             Dimension::Voltage => "a voltage",
+            Dimension::Mass => "a mass",
         }
+    }
+
+    /// A number of this unit in SI; none if there is no such unit.
+    pub fn to_si(self, value: f64, unit: &str) -> Option<f64> {
+        let known = self.units().iter().find(|u| u.names.contains(&unit))?;
+        Some(value * known.times / known.over)
+    }
+
+    /// An SI value in a unit; none if there is no such unit.
+    pub fn from_si(self, si: f64, unit: &str) -> Option<f64> {
+        let known = self.units().iter().find(|u| u.names.contains(&unit))?;
+        Some(si * known.over / known.times)
     }
 }
 
 /// A number with a unit, as written and in SI.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Quantity {
-    /// In metres, radians or volts.
+    /// In metres, radians, volts or kilograms.
     pub si: f64,
     /// As written, but for the kind of blanks.
     pub text: String,
+    /// The unit, in its first spelling.
+    pub unit: &'static str,
 }
 
 /// Why a text is not a quantity. The messages continue a sentence that has named the text.
@@ -179,7 +203,7 @@ impl Quantity {
         }
         // As written, but with one plain blank at most.
         let blank = if plain.len() > number.len() + unit.len() { " " } else { "" };
-        Ok(Quantity { si, text: format!("{number}{blank}{unit}") })
+        Ok(Quantity { si, text: format!("{number}{blank}{unit}"), unit: known.names[0] })
     }
 }
 

@@ -14,6 +14,7 @@ mod plates;
 mod random;
 mod squares;
 mod strips;
+mod tables;
 mod thick;
 mod threads;
 mod walls;
