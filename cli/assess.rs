@@ -6,7 +6,7 @@
 use std::io::{Read, Write};
 use std::time::Instant;
 
-use tiltgap_meshes::{Dimensions, Surroundings};
+use tiltgap_meshes::Dimensions;
 use tiltgap_solver::{Assessment, Connection, Params, Question};
 
 use crate::arguments::AssessArguments;
@@ -137,9 +137,10 @@ fn section(bench: &Bench) -> Result<(Connection, bool), JobError> {
         let remedy = "set the second number of \"pose.shift\" to \"0 mm\"";
         return Err(JobError::NotInSection { what: "shift along y", remedy });
     }
-    match (bench.connection, bench.surroundings, bench.connection_stated) {
-        (Connection::Grounded, Surroundings::Open, true) => Err(JobError::GroundedSection),
-        (Connection::Grounded, Surroundings::Open, false) => Ok((Connection::Floating, true)),
+    let open = bench.question(Dimensions::Two, bench.connection).arrangement.potential_is_open();
+    match (bench.connection, open, bench.connection_stated) {
+        (Connection::Grounded, true, true) => Err(JobError::GroundedSection),
+        (Connection::Grounded, true, false) => Ok((Connection::Floating, true)),
         (connection, ..) => Ok((connection, false)),
     }
 }

@@ -1,11 +1,12 @@
 //! A bench: two plates, the pose of the upper one, hinge, voltage, wiring and medium, in SI.
 
 use serde_json::{Map, Value};
-use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose, Surroundings};
+use tiltgap_meshes::{Arrangement, Clearances, Dimensions, Film, Guard, Plate, Pose, Surroundings, Which};
 use tiltgap_solver::{Connection, Hinge, Question};
 
 use crate::document::Node;
 use crate::key_error::KeyError;
+use crate::keys::{find, join, CLEARANCES, GROUNDED_BOX, GROUNDED_FLOOR, OPEN};
 use crate::settings::{Origin, Settings};
 use crate::source::{Source, SourceError};
 
@@ -68,6 +69,10 @@ pub struct Bench {
     pub upper: Plate,
     /// Where the upper plate stands.
     pub pose: Pose,
+    /// The guard ring, around one of them.
+    pub guard: Option<Guard>,
+    /// The film on the lower plate.
+    pub film: Option<Film>,
     /// Where the beam turns.
     pub hinge: Option<Hinge>,
     /// Upper minus lower potential, in V.
@@ -96,6 +101,70 @@ fn syntax(from: &Source, text: &str, error: &serde_json::Error) -> BenchError {
     BenchError::Syntax { from: from.clone(), what, line, column }
 }
 
+/// The guard ring, around one of the plates.
+fn guard(settings: &Settings) -> Result<Option<Guard>, KeyError> {
+    let of = |group: &str, around: Which| {
+        settings.has(group).then(|| Guard {
+            around,
+            slot_m: settings.si(&format!("{group}.slot")),
+            rim_m: settings.si(&format!("{group}.rim")),
+        })
+    };
+    match (of("lower_plate.guard", Which::Lower), of("upper_plate.guard", Which::Upper)) {
+        (Some(_), Some(_)) => Err(KeyError::TwoGuards),
+        (lower, upper) => Ok(lower.or(upper)),
+    }
+}
+
+/// What is around, with the clearances that belong to it and no others.
+fn surroundings(settings: &Settings) -> Result<Surroundings, KeyError> {
+    let path = |name: &str| join("surroundings", name);
+    let kind = settings.text("surroundings.kind");
+    let stated = format!("\"surroundings.kind\": {kind:?}");
+    let clearance = |name: &str| settings.optional_si(&path(name));
+    let needs = |name: &'static str| KeyError::Needed {
+        key: path(name),
+        name,
+        example: find(&path(name)).example,
+        because: stated.clone(),
+    };
+    let idle = |allowed: &[&str], remedy: &str| {
+        let others = CLEARANCES.as_flattened().iter().filter(|name| !allowed.contains(name));
+        match others.copied().find(|name| clearance(name).is_some()) {
+            Some(name) => {
+                Err(KeyError::Idle { key: path(name), beside: stated.clone(), remedy: remedy.into() })
+            }
+            None => Ok(()),
+        }
+    };
+    match kind {
+        OPEN => {
+            idle(&[], "leave it out, or choose \"grounded-floor\" or \"grounded-box\"")?;
+            Ok(Surroundings::Open)
+        }
+        GROUNDED_FLOOR => {
+            idle(&["below"], "leave it out, or choose \"grounded-box\"")?;
+            let below_m = clearance("below").ok_or_else(|| needs("below"))?;
+            Ok(Surroundings::GroundedFloor { below_m })
+        }
+        GROUNDED_BOX => {
+            let [x, y, z] = CLEARANCES.map(|pair| pair.map(clearance));
+            if [x, y, z].as_flattened().iter().all(|c| c.is_none()) {
+                return Err(needs("above"));
+            }
+            Ok(Surroundings::GroundedBox(Clearances {
+                hinge_side_m: x[0],
+                free_side_m: x[1],
+                left_m: y[0],
+                right_m: y[1],
+                below_m: z[0],
+                above_m: z[1],
+            }))
+        }
+        other => panic!("the table of keys has surroundings {other:?} that nobody handles"),
+    }
+}
+
 impl Bench {
     /// Reads, overrides, completes and checks. Whether the plates have room is left to the arrangement.
     ///
@@ -111,17 +180,18 @@ impl Bench {
             }
         }
         settings.complete().map_err(key)?;
-        Ok(Bench::from_settings(&settings, *from == Source::Demo))
+        Bench::from_settings(&settings, *from == Source::Demo).map_err(key)
     }
 
-    fn from_settings(settings: &Settings, demo: bool) -> Bench {
+    fn from_settings(settings: &Settings, demo: bool) -> Result<Bench, KeyError> {
         let si = |path: &str| settings.si(path);
         let plate = |which: &str| Plate {
             length_m: si(&format!("{which}.length")),
             width_m: si(&format!("{which}.width")),
             thickness_m: si(&format!("{which}.thickness")),
         };
-        Bench {
+        let relative_permittivity = settings.number("medium.relative_permittivity");
+        Ok(Bench {
             title: settings.text("title").into(),
             lower: plate("lower_plate"),
             upper: plate("upper_plate"),
@@ -131,6 +201,12 @@ impl Bench {
                 roll_rad: si("pose.roll"),
                 shift_m: settings.si_pair("pose.shift"),
             },
+            guard: guard(settings)?,
+            film: settings.has("lower_plate.film").then(|| Film {
+                thickness_m: si("lower_plate.film.thickness"),
+                permittivity_ratio: settings.number("lower_plate.film.relative_permittivity")
+                    / relative_permittivity,
+            }),
             hinge: settings
                 .has("hinge")
                 .then(|| Hinge { arm_m: si("hinge.arm"), height_m: si("hinge.height") }),
@@ -141,25 +217,21 @@ impl Bench {
                 other => panic!("the table of keys has a connection {other:?} that nobody handles"),
             },
             connection_stated: settings.origin("drive.connection") != Origin::Default,
-            surroundings: match settings.text("surroundings.kind") {
-                "open" => Surroundings::Open,
-                other => panic!("the table of keys has surroundings {other:?} that nobody handles"),
-            },
-            relative_permittivity: settings.number("medium.relative_permittivity"),
+            surroundings: surroundings(settings)?,
+            relative_permittivity,
             demo,
             as_given: settings.as_given(),
-        }
+        })
     }
 
     /// The question that the solver answers.
     pub fn question(&self, dimensions: Dimensions, connection: Connection) -> Question {
         Question {
             arrangement: Arrangement {
-                lower: self.lower,
-                upper: self.upper,
-                pose: self.pose,
+                guard: self.guard,
+                film: self.film,
                 surroundings: self.surroundings,
-                dimensions,
+                ..Arrangement::open(self.lower, self.upper, self.pose, dimensions)
             },
             hinge: self.hinge,
             connection,

@@ -1,6 +1,6 @@
 //! Where a person could go wrong with a result, or come to harm: one sentence or two for each.
 
-use tiltgap_meshes::Dimensions;
+use tiltgap_meshes::{Dimensions, Which};
 use tiltgap_solver::{wedge_factors, Connection};
 
 use crate::assess::Report;
@@ -32,6 +32,8 @@ pub fn mistakes(report: &Report) -> Result<Vec<String>, NotANumber> {
     let all = [
         nearly_touching(report)?,
         no_overlap(report),
+        guarded(report),
+        film(report)?,
         factors_differ(report),
         torque_factor(report),
         bridge(report)?,
@@ -61,7 +63,9 @@ fn voltage(report: &Report) -> Result<Option<String>, NotANumber> {
 
 fn field(report: &Report) -> Result<Option<String>, NotANumber> {
     let question = &report.job.question;
-    let narrowest_m = question.arrangement.edge_gaps().lowest_corner_m;
+    // Of plates in the medium alone: a film takes its share of the voltage.
+    let arrangement = &question.arrangement;
+    let narrowest_m = arrangement.lowest_edge().1 - arrangement.pose.gap_m + arrangement.effective_gap_m();
     let field = question.voltage_v.abs() / narrowest_m;
     if field < CAUTION_V_M {
         return Ok(None);
@@ -87,14 +91,15 @@ fn rounded(v: f64) -> f64 {
 fn nearly_touching(report: &Report) -> Result<Option<String>, NotANumber> {
     let arrangement = &report.job.question.arrangement;
     let (edge, height_m) = arrangement.lowest_edge();
-    let part = height_m / arrangement.pose.gap_m;
+    let (height_m, part) = (height_m - arrangement.film_m(), arrangement.narrowness());
     if part >= NEARLY_TOUCHING {
         return Ok(None);
     }
     Ok(Some(format!(
-        "Nearly touching: the {edge} stands {} above the lower plate, {} % of the centre gap. A little dust, bow or \
+        "Nearly touching: the {edge} stands {} above the {}, {} % of what is free at the centre. A little dust, bow or \
          error of tilt there changes force and torque a lot.",
         concise_si(rounded(height_m), 0.0, "m")?,
+        if arrangement.film.is_some() { "film" } else { "lower plate" },
         fixed(100.0 * part, 1)
     )))
 }
@@ -102,6 +107,32 @@ fn nearly_touching(report: &Report) -> Result<Option<String>, NotANumber> {
 fn no_overlap(report: &Report) -> Option<String> {
     (report.job.question.arrangement.overlap().area_m2() == 0.0)
         .then(|| "The plates do not overlap: the ideal formula gives zero, and there are no factors.".into())
+}
+
+/// With a guard ring the numbers are of the plate without it.
+fn guarded(report: &Report) -> Option<String> {
+    Some(match report.job.bench.guard?.around {
+        Which::Upper => "The upper plate has a guard ring: charge, force, torque and factors are those of the plate alone. If \
+                         the ring hangs on the beam too, the balance feels both together."
+            .into(),
+        Which::Lower => "The lower plate has a guard ring: charge and factors are those of the lower plate alone, and so \
+                         are force and torque, taken as what it alone does to the upper plate. The balance feels the upper \
+                         plate in all, which is stated apart."
+            .into(),
+    })
+}
+
+/// Which gap the ideal formula takes with a film.
+fn film(report: &Report) -> Result<Option<String>, NotANumber> {
+    let arrangement = &report.job.question.arrangement;
+    if arrangement.film.is_none() {
+        return Ok(None);
+    }
+    Ok(Some(format!(
+        "The ideal formula takes the effective gap (d - t) + t/e_r = {} (t, e_r: thickness and permittivity of the film, the \
+         latter over that of the medium). Charge that settles on the film changes the force and is not in any number.",
+        concise_si(rounded(arrangement.effective_gap_m()), 0.0, "m")?
+    )))
 }
 
 fn factors_differ(report: &Report) -> Option<String> {

@@ -45,6 +45,7 @@ pub fn report() -> Report {
             force_n: [estimate(1.25e-6, 4e-9), zero, estimate(-450e-6, 3e-9)],
             torque_hinge_nm: Some([zero, torque_y, zero]),
             torque_centre_nm: [zero, estimate(-1.5e-6, 3e-10), zero],
+            guard: None,
             ideal: Ideal { capacitance_f: 20e-12, force_n: 400e-6, torque_nm: Some(60e-6) },
             factors: Factors {
                 capacitance: factor(1.3, 1e-4, 1.01),

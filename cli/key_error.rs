@@ -88,6 +88,34 @@ pub enum KeyError {
         /// The nearest of them.
         nearest: &'static str,
     },
+    /// A key that another one asks for is not there.
+    #[error("{because} needs {key:?}; add it, for example \"{name}\": {example}")]
+    Needed {
+        /// Path of the key.
+        key: String,
+        /// Its last part.
+        name: &'static str,
+        /// A value that does.
+        example: &'static str,
+        /// What asks for it.
+        because: String,
+    },
+    /// A key that means nothing beside another one.
+    #[error("{key:?} means nothing with {beside}; {remedy}")]
+    Idle {
+        /// Path of the key.
+        key: String,
+        /// The other one, with its value.
+        beside: String,
+        /// What to do.
+        remedy: String,
+    },
+    /// Two guard rings.
+    #[error(
+        "both plates have a \"guard\"; keep the one around the plate whose charge or force is measured, and make the other \
+         plate as large as it is with its ring"
+    )]
+    TwoGuards,
     /// A text of several lines or with escape sequences.
     #[error("{key:?} is {}, which has a character that cannot be printed; write plain text in one line", quoted(.found))]
     Unprintable {

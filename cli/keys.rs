@@ -14,6 +14,9 @@ pub const PERMITTIVITY_OF_AIR: f64 = 1.000_54;
 /// Largest relative permittivity accepted: above every liquid and most ceramics.
 const PERMITTIVITY_LIMIT: f64 = 1e5;
 
+/// Largest relative permittivity of a film: what the grids were made for.
+const FILM_PERMITTIVITY_LIMIT: f64 = 1e3;
+
 /// What a value may be.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum Range {
@@ -105,23 +108,67 @@ use Kind::{Choice, Group, Number, Pair, Text};
 use Need::{Default, Optional, Required};
 use Range::{Any, Between, NotNegative, NotZero, Positive};
 
-const PLATE: &[Key] = &[
-    key(
-        "length",
-        Kind::Quantity(Length, Positive),
-        Required,
-        "\"110 mm\"",
-        "extent along x, from the hinge edge to the free edge",
-    ),
-    key("width", Kind::Quantity(Length, Positive), Required, "\"90 mm\"", "extent along y, the hinge axis"),
-    key(
-        "thickness",
-        Kind::Quantity(Length, NotNegative),
-        Default(|| json!("0 mm")),
-        "\"2 mm\"",
-        "extent along z, away from the gap; 0 is a thin sheet",
-    ),
-];
+const LENGTH: Key = key(
+    "length",
+    Kind::Quantity(Length, Positive),
+    Required,
+    "\"110 mm\"",
+    "extent along x, from the hinge edge to the free edge",
+);
+
+const WIDTH: Key =
+    key("width", Kind::Quantity(Length, Positive), Required, "\"90 mm\"", "extent along y, the hinge axis");
+
+const THICKNESS: Key = key(
+    "thickness",
+    Kind::Quantity(Length, NotNegative),
+    Default(|| json!("0 mm")),
+    "\"2 mm\"",
+    "extent along z, away from the gap; 0 is a thin sheet",
+);
+
+const GUARD: Key = key(
+    "guard",
+    Group(&[
+        key(
+            "slot",
+            Kind::Quantity(Length, Positive),
+            Required,
+            "\"0.2 mm\"",
+            "width of the empty slot between the plate and its guard ring",
+        ),
+        key("rim", Kind::Quantity(Length, Positive), Required, "\"15 mm\"", "width of the guard ring itself"),
+    ]),
+    Optional,
+    "{ \"slot\": \"0.2 mm\", \"rim\": \"15 mm\" }",
+    "guard ring around this plate, coplanar and equally thick, on its potential; one of the two plates may have one",
+);
+
+const FILM: Key = key(
+    "film",
+    Group(&[
+        key(
+            "thickness",
+            Kind::Quantity(Length, Positive),
+            Required,
+            "\"50 um\"",
+            "thickness of the film; the gap counts from the metal below it",
+        ),
+        key(
+            "relative_permittivity",
+            Number(Between(1.0, FILM_PERMITTIVITY_LIMIT)),
+            Required,
+            "2.3",
+            "of the film",
+        ),
+    ]),
+    Optional,
+    "{ \"thickness\": \"50 um\", \"relative_permittivity\": 2.3 }",
+    "insulating film that covers the facing surface of the lower plate (not a guard ring)",
+);
+
+const LOWER_PLATE: &[Key] = &[LENGTH, WIDTH, THICKNESS, GUARD, FILM];
+const UPPER_PLATE: &[Key] = &[LENGTH, WIDTH, THICKNESS, GUARD];
 
 const POSE: &[Key] = &[
     key(
@@ -188,13 +235,36 @@ const DRIVE: &[Key] = &[
     ),
 ];
 
-const SURROUNDINGS: &[Key] = &[key(
-    "kind",
-    Choice(&["open"]),
-    Default(|| json!("open")),
-    "\"open\"",
-    "open: nothing else near, zero potential far away",
-)];
+/// A clearance of the grounded floor or box.
+const fn clearance(name: &'static str, about: &'static str) -> Key {
+    key(name, Kind::Quantity(Length, Positive), Optional, "\"40 mm\"", about)
+}
+
+/// Kinds of surroundings.
+pub const OPEN: &str = "open";
+/// A grounded plane below.
+pub const GROUNDED_FLOOR: &str = "grounded-floor";
+/// Grounded walls around.
+pub const GROUNDED_BOX: &str = "grounded-box";
+/// Names of the clearances in the group of the surroundings, by axis and end; the floor uses the one below alone.
+pub const CLEARANCES: [[&str; 2]; 3] = [["hinge_side", "free_side"], ["left", "right"], ["below", "above"]];
+
+const SURROUNDINGS: &[Key] = &[
+    key(
+        "kind",
+        Choice(&[OPEN, GROUNDED_FLOOR, GROUNDED_BOX]),
+        Default(|| json!(OPEN)),
+        "\"open\"",
+        "open: nothing else near, zero potential far away; grounded-floor: a grounded plane without end below the \
+         plates; grounded-box: grounded walls, of which some may be left out",
+    ),
+    clearance("below", "from the back of the lower plate down to the grounded floor"),
+    clearance("above", "grounded box: from the facing surface of the lower plate up to the lid"),
+    clearance("hinge_side", "grounded box: from the lower plate's edge (or guard ring) at -x to the wall there"),
+    clearance("free_side", "grounded box: from the lower plate's edge (or guard ring) at +x to the wall there"),
+    clearance("left", "grounded box: from the lower plate's edge (or guard ring) at -y to the wall there"),
+    clearance("right", "grounded box: from the lower plate's edge (or guard ring) at +y to the wall there"),
+];
 
 const MEDIUM: &[Key] = &[key(
     "relative_permittivity",
@@ -216,14 +286,14 @@ pub const BENCH: &[Key] = &[
     ),
     key(
         "lower_plate",
-        Group(PLATE),
+        Group(LOWER_PLATE),
         Required,
         "{ \"length\": \"110 mm\", \"width\": \"90 mm\" }",
         "the fixed plate",
     ),
     key(
         "upper_plate",
-        Group(PLATE),
+        Group(UPPER_PLATE),
         Required,
         "{ \"length\": \"110 mm\", \"width\": \"90 mm\" }",
         "the plate on the beam",

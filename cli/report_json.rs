@@ -4,8 +4,8 @@
 //! silence; here every number goes through a check that refuses them.
 
 use serde_json::{json, Map, Number, Value};
-use tiltgap_meshes::Dimensions;
-use tiltgap_solver::{Components, Connection, Estimate, Factor};
+use tiltgap_meshes::{Dimensions, Which};
+use tiltgap_solver::{Components, Connection, Estimate, Factor, ForceAndTorque};
 
 use crate::assess::Report;
 use crate::caution::{dangers, mistakes};
@@ -38,6 +38,16 @@ fn factor(key: &str, f: &Option<Factor>) -> Result<Value, Error> {
         "uncertainty": number(key, f.uncertainty)?,
         "wedge": number(key, f.wedge)?,
         "fringe": number(key, f.fringe)?,
+    }))
+}
+
+fn force_and_torque(key: &str, all: &ForceAndTorque) -> Result<Value, Error> {
+    let hinge =
+        all.torque_hinge_nm.as_ref().map(|t| vector(&format!("{key}.torque_hinge_nm"), t)).transpose()?;
+    Ok(json!({
+        "force_n": vector(&format!("{key}.force_n"), &all.force_n)?,
+        "torque_hinge_nm": hinge,
+        "torque_centre_nm": vector(&format!("{key}.torque_centre_nm"), &all.torque_centre_nm)?,
     }))
 }
 
@@ -101,9 +111,24 @@ pub fn report_json(report: &Report) -> Result<String, Error> {
     let hinge = a.torque_hinge_nm.as_ref().map(|t| vector("torque_hinge_nm", t)).transpose()?;
     out.put("torque_hinge_nm", hinge);
     out.put("torque_centre_nm", vector("torque_centre_nm", &a.torque_centre_nm)?);
+    if let Some(guard) = &a.guard {
+        out.put(
+            "guard",
+            json!({
+                "around": match job.bench.guard.map(|g| g.around) {
+                    Some(Which::Lower) => "lower_plate",
+                    _ => "upper_plate",
+                },
+                "capacitance_f": estimate("guard.capacitance_f", guard.capacitance_f)?,
+                "ring": force_and_torque("guard.ring", &guard.ring)?,
+                "beam": force_and_torque("guard.beam", &guard.beam)?,
+            }),
+        );
+    }
     out.put(
         "ideal",
         json!({
+            "gap_m": number("ideal.gap_m", job.question.arrangement.effective_gap_m())?,
             "capacitance_f": number("ideal.capacitance_f", a.ideal.capacitance_f)?,
             "force_n": number("ideal.force_n", a.ideal.force_n)?,
             "torque_nm": a.ideal.torque_nm.map(|t| number("ideal.torque_nm", t)).transpose()?,

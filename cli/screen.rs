@@ -4,12 +4,13 @@
 use std::f64::consts::PI;
 
 use serde_json::Value;
-use tiltgap_meshes::Dimensions;
-use tiltgap_solver::{Components, Connection, Estimate, Factor};
+use tiltgap_meshes::{Dimensions, Surroundings, Which};
+use tiltgap_solver::{Components, Connection, Estimate, Factor, ForceAndTorque};
 
 use crate::assess::{Job, Report};
 use crate::caution::{dangers, mistakes, signed};
 use crate::concise::{concise, concise_si, decimals, fixed, NotANumber, Scale};
+use crate::keys::CLEARANCES;
 use crate::progress::grouped;
 use crate::table::{paragraph, Table};
 
@@ -36,6 +37,7 @@ pub fn screen(report: &Report) -> Result<String, NotANumber> {
         main_table(report)?,
         shares(report),
         wrench(report)?,
+        guard(report)?,
         matrix(report)?,
         numerics(report)?,
         minding(report)?,
@@ -80,12 +82,23 @@ fn head(report: &Report) -> Result<String, NotANumber> {
     let plate = |group: &str, p: &tiltgap_meshes::Plate| -> Result<String, NotANumber> {
         let long = length(group, "length", p.length_m)?;
         let thick = length(group, "thickness", p.thickness_m)?;
-        Ok(if two_dimensional(job) {
+        let mut text = if two_dimensional(job) {
             format!("length {long}, very wide, thickness {thick}")
         } else {
             let wide = length(group, "width", p.width_m)?;
             format!("{long} x {wide} (length x width), thickness {thick}")
-        })
+        };
+        let part = |key: &str, name: &str, si: f64| written(&given[group][key][name], si, "m");
+        if let Some(guard) = bench.guard.filter(|_| given[group].get("guard").is_some()) {
+            let (slot, rim) = (part("guard", "slot", guard.slot_m)?, part("guard", "rim", guard.rim_m)?);
+            text += &format!("; guard ring {rim} wide after a slot of {slot}");
+        }
+        if let Some(film) = bench.film.filter(|_| given[group].get("film").is_some()) {
+            let thick = part("film", "thickness", film.thickness_m)?;
+            let permittivity = film.permittivity_ratio * bench.relative_permittivity;
+            text += &format!("; film {thick}, relative permittivity {}", concise(permittivity, 0.0)?);
+        }
+        Ok(text)
     };
     let pose = &bench.pose;
     let angle = |key: &str, si: f64| written(&given["pose"][key], si, "deg");
@@ -127,14 +140,31 @@ fn head(report: &Report) -> Result<String, NotANumber> {
         },
     ));
     lines.push(("Drive", wiring));
-    lines.push((
-        "Surroundings",
-        format!("open; relative permittivity {}", concise(bench.relative_permittivity, 0.0)?),
-    ));
+    lines.push(("Surroundings", surroundings(report)?));
     for (name, what) in lines {
         text.push_str(&paragraph(&format!("{name:<14}"), &what));
     }
     Ok(text)
+}
+
+fn surroundings(report: &Report) -> Result<String, NotANumber> {
+    let bench = &report.job.bench;
+    let given = &bench.as_given["surroundings"];
+    let walls = bench.surroundings.walls().by_axis();
+    let mut parts = Vec::new();
+    for (names, walls) in CLEARANCES.iter().zip(walls) {
+        for (name, wall) in names.iter().zip(walls) {
+            if let Some(si) = wall {
+                parts.push(format!("{} {}", name.replace('_', " "), written(&given[*name], si, "m")?));
+            }
+        }
+    }
+    let what = match bench.surroundings {
+        Surroundings::Open | Surroundings::InsulatedWalls => "open".into(),
+        Surroundings::GroundedFloor { .. } => format!("grounded floor, {}", parts.join(", ")),
+        Surroundings::GroundedBox(_) => format!("grounded box, {}", parts.join(", ")),
+    };
+    Ok(format!("{what}; relative permittivity {}", concise(bench.relative_permittivity, 0.0)?))
 }
 
 fn edge_gaps(job: &Job) -> Result<String, NotANumber> {
@@ -166,7 +196,10 @@ fn rows(report: &Report) -> Vec<Row> {
             factor: a.factors.capacitance,
         },
         Row {
-            name: "Charge, upper plate",
+            name: match report.job.bench.guard.map(|g| g.around) {
+                None => "Charge, upper plate",
+                Some(_) => "Charge, guarded plate",
+            },
             unit: "C",
             symbol: "k_C",
             ideal: a.ideal.capacitance_f * question.voltage_v,
@@ -250,8 +283,22 @@ fn shares(report: &Report) -> String {
 
 fn wrench(report: &Report) -> Result<String, NotANumber> {
     let a = &report.assessment;
+    let on = match report.job.bench.guard.map(|g| g.around) {
+        None => "On the upper plate",
+        Some(Which::Upper) => "On the guarded plate",
+        Some(Which::Lower) => "From the guarded plate",
+    };
+    let all = ForceAndTorque {
+        force_n: a.force_n,
+        torque_hinge_nm: a.torque_hinge_nm,
+        torque_centre_nm: a.torque_centre_nm,
+    };
+    force_and_torque(report, on, &all)
+}
+
+fn force_and_torque(report: &Report, on: &str, all: &ForceAndTorque) -> Result<String, NotANumber> {
     let mut table = Table::new(2);
-    table.row(["On the upper plate", "", "x", "y", "z"]);
+    table.row([on, "", "x", "y", "z"]);
     let mut put = |name: &str, unit: &str, v: &Components| -> Result<(), NotANumber> {
         let size = v.iter().map(|e| e.value.abs().max(e.uncertainty)).fold(0.0, f64::max);
         let scale = Scale::suited(size, &per_metre(&report.job, unit));
@@ -259,12 +306,30 @@ fn wrench(report: &Report) -> Result<String, NotANumber> {
         table.row([name, &scale.unit, &x?, &y?, &z?]);
         Ok(())
     };
-    put("Force", "N", &a.force_n)?;
-    if let Some(torque) = &a.torque_hinge_nm {
+    put("Force", "N", &all.force_n)?;
+    if let Some(torque) = &all.torque_hinge_nm {
         put("Torque about the hinge", "N m", torque)?;
     }
-    put("Torque about its centre", "N m", &a.torque_centre_nm)?;
+    put("Torque about its centre", "N m", &all.torque_centre_nm)?;
     Ok(table.text())
+}
+
+/// What the guard ring takes upon itself.
+fn guard(report: &Report) -> Result<String, NotANumber> {
+    let Some(guard) = &report.assessment.guard else { return Ok(String::new()) };
+    let e = guard.capacitance_f;
+    let scale = Scale::suited(e.value.abs(), &per_metre(&report.job, "F"));
+    let (ring, beam) = match report.job.bench.guard.map(|g| g.around) {
+        Some(Which::Lower) => ("From the guard ring", "On the upper plate in all"),
+        _ => ("On the guard ring", "On plate and ring in all"),
+    };
+    let text = force_and_torque(report, ring, &guard.ring)?
+        + &format!(
+            "Capacitance of the guard ring: {} {}.\n",
+            scale.concise(e.value, e.uncertainty)?,
+            scale.unit
+        );
+    Ok(format!("{text}\n{}", force_and_torque(report, beam, &guard.beam)?))
 }
 
 fn matrix(report: &Report) -> Result<String, NotANumber> {

@@ -170,6 +170,11 @@ impl Settings {
         }
     }
 
+    /// A quantity in SI that may be left out.
+    pub fn optional_si(&self, path: &str) -> Option<f64> {
+        self.has(path).then(|| self.si(path))
+    }
+
     /// Two quantities in SI.
     pub fn si_pair(&self, path: &str) -> [f64; 2] {
         match &self.entry(path).1 {
@@ -194,7 +199,8 @@ impl Settings {
         }
     }
 
-    /// All values as they were given, in the order and the form of the file.
+    /// All values as they were given, in the order of the keys and the form of the file; what may be left out and was is not
+    /// there.
     pub fn as_given(&self) -> Map<String, Value> {
         self.group_as_given("", BENCH)
     }
@@ -203,9 +209,11 @@ impl Settings {
         let mut map = Map::new();
         for key in keys.iter().filter(|k| !k.name.starts_with('$')) {
             let path = join(group, key.name);
+            if matches!(key.need, Need::Optional) && !self.has(&path) {
+                continue;
+            }
             let value = match key.kind {
-                Kind::Group(below) if self.has(&path) => self.group_as_given(&path, below).into(),
-                Kind::Group(_) => Value::Null,
+                Kind::Group(below) => self.group_as_given(&path, below).into(),
                 _ => match &self.entry(&path).1 {
                     Setting::Text(text) => json!(text),
                     Setting::Quantity(q) => json!(q.text),
@@ -325,7 +333,7 @@ mod tests {
         assert_eq!(s.number("medium.relative_permittivity"), 1.00054);
         assert_eq!((s.si("upper_plate.thickness"), s.si_pair("pose.shift")), (0.0, [0.0, 0.0]));
         assert!(!s.has("hinge"));
-        assert_eq!(s.as_given()["hinge"], Value::Null);
+        assert!(!s.as_given().contains_key("hinge"));
     }
 
     #[test]

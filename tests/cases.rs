@@ -3,7 +3,7 @@
 use std::sync::OnceLock;
 
 use serde_json::Value;
-use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose, Surroundings};
+use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose};
 use tiltgap_solver::{assess, Assessment, Connection, Error, Estimate, Params, Question, EPS0};
 
 /// The cases of a family of `reference-cases`.
@@ -37,41 +37,34 @@ pub fn plates(case: &Value) -> Arrangement {
         width_m: number(&p["width"]),
         thickness_m: number(&p["thickness"]),
     };
-    Arrangement {
-        lower: plate(&g["lower"]),
-        upper: plate(&g["upper"]),
-        pose: Pose {
+    Arrangement::open(
+        plate(&g["lower"]),
+        plate(&g["upper"]),
+        Pose {
             gap_m: number(&g["gap"]),
             tilt_rad: number(&g["tilt_deg"]).to_radians(),
             roll_rad: number(&g["roll_deg"]).to_radians(),
             shift_m: [number(&g["shift"][0]), number(&g["shift"][1])],
         },
-        surroundings: Surroundings::Open,
-        dimensions: Dimensions::Three,
-    }
+        Dimensions::Three,
+    )
 }
 
 /// The strips of a two-dimensional case.
 pub fn strips(case: &Value) -> Arrangement {
     let g = &case["geometry"];
     let plate = |length: &Value| Plate { length_m: number(length), width_m: 1.0, thickness_m: 0.0 };
-    Arrangement {
-        lower: plate(&g["lower_length"]),
-        upper: plate(&g["upper_length"]),
-        pose: Pose {
+    Arrangement::open(
+        plate(&g["lower_length"]),
+        plate(&g["upper_length"]),
+        Pose {
             gap_m: number(&g["gap"]),
             tilt_rad: number(&g["tilt_deg"]).to_radians(),
             roll_rad: 0.0,
             shift_m: [number(&g["shift_x"]), 0.0],
         },
-        surroundings: Surroundings::Open,
-        dimensions: Dimensions::Two,
-    }
-}
-
-/// Whether both plates are sheets.
-pub fn thin(arrangement: &Arrangement) -> bool {
-    arrangement.lower.thickness_m == 0.0 && arrangement.upper.thickness_m == 0.0
+        Dimensions::Two,
+    )
 }
 
 /// An assessment in the units of the reference cases: permittivity and voltage 1, no hinge.
@@ -105,16 +98,16 @@ pub fn strips_at(accuracy: f64) -> Vec<Solved> {
 /// A plate case, how it is wired and what came of it.
 pub type SolvedPlates = (Value, Connection, Assessment);
 
-/// All thin plate cases in both connections at the default accuracy, solved once for all tests.
+/// All plate cases in both connections at the default accuracy, solved once for all tests.
 pub fn plates_at_default() -> &'static [SolvedPlates] {
     static SOLVED: OnceLock<Vec<SolvedPlates>> = OnceLock::new();
     SOLVED.get_or_init(|| plates_at(DEFAULT))
 }
 
-/// All thin plate cases in both connections at some accuracy.
+/// All plate cases in both connections at some accuracy.
 pub fn plates_at(accuracy: f64) -> Vec<SolvedPlates> {
     let mut all = Vec::new();
-    for case in family("plates").into_iter().filter(|case| thin(&plates(case))) {
+    for case in family("plates") {
         for connection in [Connection::Floating, Connection::Grounded] {
             let solved = solve(plates(&case), connection, accuracy);
             all.push((case.clone(), connection, solved.unwrap_or_else(|e| panic!("{}: {e}", name(&case)))));

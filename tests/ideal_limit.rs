@@ -7,7 +7,7 @@ use tiltgap_solver::{assess, Connection, Hinge, Params, Question};
 fn bench(surroundings: Surroundings, dimensions: Dimensions, gap_m: f64) -> Arrangement {
     let plate = Plate { length_m: 0.1, width_m: 0.08, thickness_m: 0.0 };
     let pose = Pose { gap_m, tilt_rad: 0.0, roll_rad: 0.0, shift_m: [0.0; 2] };
-    Arrangement { lower: plate, upper: plate, pose, surroundings, dimensions }
+    Arrangement { surroundings, ..Arrangement::open(plate, plate, pose, dimensions) }
 }
 
 /// k_C, k_F and k_T.

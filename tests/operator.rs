@@ -1,7 +1,7 @@
 //! The operator against matrices written out by hand, and against its definition.
 
 use tiltgap_meshes::{
-    Arrangement, Axis, Carry, Dimensions, End, Grid, GridOptions, NodeBox, Plate, Pose, Surroundings,
+    Arrangement, Axis, Body, Carry, Dimensions, End, FarField, Grid, GridOptions, NodeBox, Plate, Pose,
 };
 use tiltgap_solver::Operator;
 
@@ -9,23 +9,20 @@ use tiltgap_solver::Operator;
 fn one_cell(shear: f64) -> Grid {
     let axis = |length: f64| Axis { nodes: vec![0.0, length], segments: vec![1], ends: [End::Natural; 2] };
     let axes = [axis(1.0), axis(2.0), axis(4.0)];
-    let plate = |k: usize| NodeBox { i: [0, 1], j: [0, 1], k: [k, k] };
     // The carry X = x + w (R p - p) with p = x and w = 1 everywhere.
     let carry = Carry {
         sideways: vec![1.0; 2],
         vertical: vec![1.0; 2],
+        beside: [vec![1.0; 2], vec![1.0; 2]],
         point: [axes[0].nodes.clone(), axes[1].nodes.clone(), axes[2].nodes.clone()],
         rotation: [[1.0, 0.0, shear / 4.0], [0.0, 1.0, 0.0], [0.0, 0.0, 1.0]],
     };
-    Grid {
-        q: 1,
-        axes,
-        lower: plate(0),
-        upper: plate(1),
-        upper_carry: carry.clone(),
-        lower_carry: carry,
-        half: false,
-    }
+    let plate = |k: usize| {
+        let hull = NodeBox { i: [0, 1], j: [0, 1], k: [k, k] };
+        Body { boxes: vec![hull], hull, carry: carry.clone(), guarded_carry: None }
+    };
+    let far_field = FarField { origin: [0.0; 3], decay: 1.0 };
+    Grid { q: 1, lower: plate(0), upper: plate(1), axes, film: None, far_field, half: false }
 }
 
 fn dense(grid: &Grid) -> Vec<Vec<f64>> {
@@ -92,8 +89,7 @@ fn a_sheared_cell() {
 fn the_matrix_is_symmetric_sorted_and_annihilates_constants_up_to_the_far_boundary() {
     let plate = Plate { length_m: 1.0, width_m: 0.8, thickness_m: 0.0 };
     let pose = Pose { gap_m: 0.07, tilt_rad: 0.06, roll_rad: 0.04, shift_m: [0.02, 0.01] };
-    let (surroundings, dimensions) = (Surroundings::Open, Dimensions::Three);
-    let arrangement = Arrangement { lower: plate, upper: plate, pose, surroundings, dimensions };
+    let arrangement = Arrangement::open(plate, plate, pose, Dimensions::Three);
     let grid = Grid::new(&arrangement, 1, &GridOptions::suited(&arrangement)).unwrap();
     let matrix = Operator::assemble(&grid).unwrap().matrix();
     let shape = grid.shape();

@@ -1,7 +1,7 @@
 //! Random benches: never a panic, never a number that cannot be.
 
 use proptest::prelude::*;
-use tiltgap_meshes::{Arrangement, Dimensions, GridOptions, Plate, Pose, Surroundings};
+use tiltgap_meshes::{Arrangement, Dimensions, GridOptions, Plate, Pose};
 use tiltgap_solver::{assess, Connection, Hinge, Level, LevelParams, Params, Question};
 
 fn arrangement() -> impl Strategy<Value = Arrangement> {
@@ -21,7 +21,7 @@ fn arrangement() -> impl Strategy<Value = Arrangement> {
         let shift_m = [dx, if plain || !space { 0.0 } else { dy }];
         let dimensions = if space { Dimensions::Three } else { Dimensions::Two };
         let pose = Pose { gap_m, tilt_rad, roll_rad, shift_m };
-        Arrangement { lower, upper, pose, surroundings: Surroundings::Open, dimensions }
+        Arrangement::open(lower, upper, pose, dimensions)
     })
 }
 
@@ -54,13 +54,12 @@ proptest! {
         let plate = Plate { length_m: length, width_m: 0.1, thickness_m: 0.0 };
         let pose = Pose { gap_m: gap, tilt_rad: tilt, roll_rad: 0.0, shift_m: [0.0; 2] };
         let question = Question {
-            arrangement: Arrangement {
-                lower: plate,
-                upper: plate,
+            arrangement: Arrangement::open(
+                plate,
+                plate,
                 pose,
-                surroundings: Surroundings::Open,
-                dimensions: Dimensions::Three,
-            },
+                Dimensions::Three,
+            ),
             hinge: Some(Hinge { arm_m: arm, height_m: 0.0 }),
             connection: Connection::Grounded,
             voltage_v: voltage,

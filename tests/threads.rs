@@ -1,6 +1,6 @@
 //! One, two and four threads give the same bits.
 
-use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose, Surroundings};
+use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose};
 use tiltgap_solver::{assess, Connection, Params, Question};
 
 #[test]
@@ -8,13 +8,12 @@ fn results_do_not_depend_on_the_number_of_threads() {
     let plate = Plate { length_m: 0.12, width_m: 0.1, thickness_m: 0.0 };
     for roll_rad in [0.0, 0.003] {
         let question = Question {
-            arrangement: Arrangement {
-                lower: plate,
-                upper: plate,
-                pose: Pose { gap_m: 0.004, tilt_rad: 0.01, roll_rad, shift_m: [0.001, 0.0] },
-                surroundings: Surroundings::Open,
-                dimensions: Dimensions::Three,
-            },
+            arrangement: Arrangement::open(
+                plate,
+                plate,
+                Pose { gap_m: 0.004, tilt_rad: 0.01, roll_rad, shift_m: [0.001, 0.0] },
+                Dimensions::Three,
+            ),
             hinge: None,
             connection: Connection::Grounded,
             voltage_v: 250.0,

@@ -1,19 +1,18 @@
 //! Force and torque by a second route each: the difference quotient of the discrete energy, and action and reaction.
 
-use tiltgap_meshes::{Arrangement, Dimensions, Grid, GridOptions, Plate, Pose, Sideways, Surroundings};
+use tiltgap_meshes::{Arrangement, Dimensions, Grid, GridOptions, Plate, Pose, Sideways};
 use tiltgap_solver::{cg, Connection, Level, LevelParams, Operator};
 
 use crate::cases::solve;
 
 /// A bench without any symmetry.
 fn rolled() -> Arrangement {
-    Arrangement {
-        lower: Plate { length_m: 1.0, width_m: 0.9, thickness_m: 0.0 },
-        upper: Plate { length_m: 0.9, width_m: 1.0, thickness_m: 0.0 },
-        pose: Pose { gap_m: 0.08, tilt_rad: 0.05, roll_rad: 0.03, shift_m: [0.03, -0.02] },
-        surroundings: Surroundings::Open,
-        dimensions: Dimensions::Three,
-    }
+    Arrangement::open(
+        Plate { length_m: 1.0, width_m: 0.9, thickness_m: 0.0 },
+        Plate { length_m: 0.9, width_m: 1.0, thickness_m: 0.0 },
+        Pose { gap_m: 0.08, tilt_rad: 0.05, roll_rad: 0.03, shift_m: [0.03, -0.02] },
+        Dimensions::Three,
+    )
 }
 
 fn solved(arrangement: &Arrangement, sideways: Sideways) -> (Level, Operator) {
@@ -28,9 +27,9 @@ fn solved(arrangement: &Arrangement, sideways: Sideways) -> (Level, Operator) {
 /// Energy of a fixed nodal field on the grid with its upper plate displaced by the rigid motion `by` (translation, then
 /// rotation vector about the centre of the facing surface), spread over the grid by the plate's own carry.
 fn displaced_energy(grid: &Grid, field: &[[f64; 2]], potential: [f64; 2], by: [f64; 6]) -> f64 {
-    let (carry, shape) = (&grid.upper_carry, grid.shape());
+    let (carry, shape) = (&grid.upper.carry, grid.shape());
     let position = |i: usize, j: usize, k: usize| {
-        let (x, r, w) = (grid.position(i, j, k), carry.lever(i, j, k), carry.weights(k));
+        let (x, r, w) = (grid.position(i, j, k), carry.lever(i, j, k), carry.weights(i, j, k));
         let turned = [by[4] * r[2] - by[5] * r[1], by[5] * r[0] - by[3] * r[2], by[3] * r[1] - by[4] * r[0]];
         [0, 1, 2].map(|d| x[d] + w[d] * (by[d] + turned[d]))
     };
@@ -124,9 +123,9 @@ fn energy_equals_the_charge_on_the_plates() {
     let n = level.grid.nodes();
     let mut flux = vec![[0.0; 2]; n];
     operator.multiply(&level.phi, &vec![false; n], &mut flux);
-    for (plate, of) in [(level.grid.lower, 0), (level.grid.upper, 1)] {
+    for (plate, of) in [(level.grid.lower.plate(), 0), (level.grid.upper.plate(), 1)] {
         let mut charge = [0.0; 2];
-        for node in level.grid.plate_nodes(&plate) {
+        for node in level.grid.nodes_of(plate) {
             charge = [charge[0] + flux[node][0], charge[1] + flux[node][1]];
         }
         for column in 0..2 {

@@ -27,10 +27,29 @@ const SAME_EDGE: f64 = 1e-12;
 /// What stands at an end of an axis.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum End {
-    /// Far boundary of open space, at this distance from the plates: the potential falls off as 1/r.
-    Far(f64),
+    /// Far boundary of open space.
+    Far {
+        /// Distance from the plates, in units of the size.
+        distance: f64,
+        /// The potential falls off as this power of 1/r.
+        decay: f64,
+    },
     /// No flux: a symmetry plane or an insulating wall.
     Natural,
+    /// A grounded wall: the potential is zero.
+    Held,
+}
+
+impl End {
+    /// What the end adds to the stiffness of the last node: the Robin weight of a distant face, infinity where the
+    /// potential is given.
+    pub fn stiffness(self) -> f64 {
+        match self {
+            End::Far { distance, decay } => decay / distance,
+            End::Natural => 0.0,
+            End::Held => f64::INFINITY,
+        }
+    }
 }
 
 /// A graded axis: nodes in ascending order, the cells of its segments, what stands at its ends.
@@ -60,15 +79,55 @@ fn one_end(a: f64, b: f64, n: usize, power: f64) -> Vec<f64> {
     (0..=n).map(|m| a + (b - a) * (1.0 - (1.0 - m as f64 / n as f64).powf(power))).collect()
 }
 
-/// n + 1 distances from an edge, crowded at the edge and stretching exponentially out to `far`.
+/// n + 1 distances from an edge, crowded at the edge and stretching exponentially out to `far`; a wall nearer than
+/// where the stretching would begin is reached without it.
 fn outward(n: usize, far: f64) -> Vec<f64> {
-    let growth = (far / OUTSIDE_SCALE).ln();
+    let scale = OUTSIDE_SCALE.min(far);
+    let growth = (far / scale).ln();
     (0..=n)
         .map(|m| {
             let t = m as f64 / n as f64;
-            OUTSIDE_SCALE * t.powf(EDGE_POWER) * (growth * t).exp()
+            scale * t.powf(EDGE_POWER) * (growth * t).exp()
         })
         .collect()
+}
+
+/// What lies beyond the outermost plate edge on one side.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Beyond {
+    /// Open space, out to this distance from the edge, where the potential falls off as a power of 1/r.
+    Open {
+        /// Distance of the far boundary, in units of the size.
+        far: f64,
+        /// The power.
+        decay: f64,
+    },
+    /// A grounded wall at this coordinate.
+    Wall(f64),
+    /// The axis is the half at positive coordinates of a symmetric one: a symmetry plane at 0.
+    Mirror,
+    /// Nothing: an insulating wall along the edge.
+    Nothing,
+}
+
+impl Beyond {
+    /// What stands at the end of the axis.
+    fn end(self) -> End {
+        match self {
+            Beyond::Open { far, decay } => End::Far { distance: far, decay },
+            Beyond::Wall(_) => End::Held,
+            Beyond::Mirror | Beyond::Nothing => End::Natural,
+        }
+    }
+
+    /// Distance from the plate edge to the end of the axis.
+    fn distance(self, edge: f64) -> f64 {
+        match self {
+            Beyond::Open { far, .. } => far,
+            Beyond::Wall(at) => (at - edge).abs(),
+            Beyond::Mirror | Beyond::Nothing => 0.0,
+        }
+    }
 }
 
 /// An axis under construction: segments are appended in ascending order.
@@ -91,57 +150,54 @@ impl Chain {
         self.nodes[self.nodes.len() - 1]
     }
 
-    /// Appends the outside, from the present end to the far boundary.
-    fn outside(&mut self, q: usize, far: f64) {
+    /// Appends what lies beyond the last edge.
+    fn outside(&mut self, q: usize, beyond: Beyond) {
         let edge = self.end();
-        let nodes: Vec<f64> = outward(OUTSIDE_CELLS * q, far).iter().map(|o| edge + o).collect();
-        self.append(&nodes);
+        let distance = beyond.distance(edge);
+        if distance > 0.0 {
+            let nodes: Vec<f64> = outward(OUTSIDE_CELLS * q, distance).iter().map(|o| edge + o).collect();
+            self.append(&nodes);
+        }
     }
 
-    /// A chain that comes in from the far boundary to `edge`.
-    fn inward(edge: f64, q: usize, far: f64) -> Self {
-        let mut nodes: Vec<f64> = outward(OUTSIDE_CELLS * q, far).iter().map(|o| edge - o).collect();
+    /// A chain that comes in from what lies beyond the first edge.
+    fn inward(edge: f64, q: usize, beyond: Beyond) -> Self {
+        let distance = beyond.distance(edge);
+        if distance == 0.0 {
+            return Chain::from(edge);
+        }
+        let mut nodes: Vec<f64> = outward(OUTSIDE_CELLS * q, distance).iter().map(|o| edge - o).collect();
         nodes.reverse();
         let mut chain = Chain::from(nodes[0]);
         chain.append(&nodes);
         chain
     }
 
-    fn finish(self, ends: [End; 2]) -> Axis {
-        Axis { nodes: self.nodes, segments: self.segments, ends }
+    fn finish(self, beyond: [Beyond; 2]) -> Axis {
+        Axis { nodes: self.nodes, segments: self.segments, ends: beyond.map(Beyond::end) }
     }
 }
 
 impl Axis {
-    /// Lateral axis of level q through the given plate edges (any order), open on both sides out to the distance
-    /// `far`; with `half`, the part at positive coordinates, from a symmetry plane at 0.
-    pub fn lateral(edges: &[f64], q: usize, half: bool, far: f64) -> Axis {
+    /// Lateral axis of level q through the given plate edges (any order), with what lies beyond them on the two sides.
+    pub fn lateral(edges: &[f64], q: usize, beyond: [Beyond; 2]) -> Axis {
         let mut e: Vec<f64> = edges.to_vec();
         e.sort_by(f64::total_cmp);
         e.dedup_by(|b, a| (*b - *a).abs() < SAME_EDGE);
-        if half {
+        let mut chain = if beyond[0] == Beyond::Mirror {
             e.retain(|&x| x > 0.0);
-        }
-        let mut chain = if half {
             let mut chain = Chain::from(0.0);
             chain.append(&one_end(0.0, e[0], PLATE_CELLS / 2 * q, EDGE_POWER));
             chain
         } else {
-            Chain::inward(e[0], q, far)
+            Chain::inward(e[0], q, beyond[0])
         };
         for pair in e.windows(2) {
             let cells = if pair[1] - pair[0] > SHORT_SEGMENT { PLATE_CELLS } else { SHORT_CELLS };
             chain.append(&both_ends(pair[0], pair[1], cells * q, EDGE_POWER));
         }
-        chain.outside(q, far);
-        chain.finish([if half { End::Natural } else { End::Far(far) }, End::Far(far)])
-    }
-
-    /// Lateral axis that ends at the edges of one plate, with insulating walls there.
-    pub fn walled(from: f64, to: f64, q: usize) -> Axis {
-        let mut chain = Chain::from(from);
-        chain.append(&both_ends(from, to, PLATE_CELLS * q, EDGE_POWER));
-        chain.finish([End::Natural; 2])
+        chain.outside(q, beyond[1]);
+        chain.finish(beyond)
     }
 
     /// The missing direction of a cross-section: one cell of unit width between insulating walls, in which the
@@ -150,25 +206,22 @@ impl Axis {
         Axis { nodes: vec![-0.5, 0.5], segments: vec![1], ends: [End::Natural; 2] }
     }
 
-    /// Vertical axis of level q: lower plate below 0, gap, upper plate from `gap` up, open space on both sides.
-    pub fn vertical(thickness: [f64; 2], gap: f64, q: usize, far: f64) -> Axis {
-        let mut chain = Chain::inward(-thickness[0], q, far);
+    /// Vertical axis of level q: lower plate below 0, film, gap up to the upper plate, upper plate, with what lies beyond
+    /// the plates.
+    pub fn vertical(thickness: [f64; 2], film: f64, gap: f64, q: usize, beyond: [Beyond; 2]) -> Axis {
+        let mut chain = Chain::inward(-thickness[0], q, beyond[0]);
         if thickness[0] > 0.0 {
             chain.append(&both_ends(-thickness[0], 0.0, SHORT_CELLS * q, BODY_POWER));
         }
-        chain.append(&both_ends(0.0, gap, GAP_CELLS * q, EDGE_POWER));
+        if film > 0.0 {
+            chain.append(&both_ends(0.0, film, GAP_CELLS * q, EDGE_POWER));
+        }
+        chain.append(&both_ends(film, gap, GAP_CELLS * q, EDGE_POWER));
         if thickness[1] > 0.0 {
             chain.append(&both_ends(gap, gap + thickness[1], SHORT_CELLS * q, BODY_POWER));
         }
-        chain.outside(q, far);
-        chain.finish([End::Far(far); 2])
-    }
-
-    /// Vertical axis that holds the gap alone, for insulating walls: nothing is outside.
-    pub fn gap_alone(gap: f64, q: usize) -> Axis {
-        let mut chain = Chain::from(0.0);
-        chain.append(&both_ends(0.0, gap, GAP_CELLS * q, EDGE_POWER));
-        chain.finish([End::Natural; 2])
+        chain.outside(q, beyond[1]);
+        chain.finish(beyond)
     }
 
     /// Number of nodes.
@@ -207,14 +260,6 @@ impl Axis {
         best
     }
 
-    /// Whether the axis is its own mirror image.
-    pub fn symmetric(&self) -> bool {
-        let n = self.len();
-        let centre = self.nodes[0] + self.nodes[n - 1];
-        self.ends[0] == self.ends[1]
-            && (0..n).all(|k| (self.nodes[k] + self.nodes[n - 1 - k] - centre).abs() < SAME_EDGE)
-    }
-
     /// Stencils that carry a field from the axis of a coarser level of the same family to this one: cubic in the
     /// parameter of each segment, never across the end of a segment, where the field has a kink or worse.
     ///
@@ -239,18 +284,23 @@ impl Axis {
 mod tests {
     use super::*;
 
+    const FAR: Beyond = Beyond::Open { far: 20.0, decay: 1.0 };
+
     #[test]
     fn the_prescribed_counts_and_the_edges() {
-        let axis = Axis::lateral(&[-0.5, 0.5, -0.5, 0.5], 2, false, 20.0);
+        let axis = Axis::lateral(&[-0.5, 0.5, -0.5, 0.5], 2, [FAR; 2]);
         assert_eq!(axis.segments, [10, 16, 10]);
-        assert!(axis.nodes.windows(2).all(|w| w[1] > w[0]) && axis.symmetric());
+        assert!(axis.nodes.windows(2).all(|w| w[1] > w[0]));
         assert_eq!(axis.nodes[axis.nearest(0.5)], 0.5);
         assert!((axis.nodes[36] - 20.5).abs() < 1e-12);
-        let half = Axis::lateral(&[-0.5, 0.5], 2, true, 20.0);
+        let half = Axis::lateral(&[-0.5, 0.5], 2, [Beyond::Mirror, FAR]);
         assert_eq!((half.segments.as_slice(), half.nodes[0]), ([8, 10].as_slice(), 0.0));
         assert!(half.nodes.iter().zip(&axis.nodes[18..]).all(|(a, b)| (a - b).abs() < 1e-14));
-        let unequal = Axis::lateral(&[-0.5, 0.5, -0.4, 0.3], 1, false, 20.0);
+        let unequal = Axis::lateral(&[-0.5, 0.5, -0.4, 0.3], 1, [FAR; 2]);
         assert_eq!(unequal.segments, [5, 4, 8, 4, 5]);
+        let walled = Axis::lateral(&[-0.5, 0.5], 2, [Beyond::Wall(-0.6), Beyond::Wall(9.0)]);
+        assert_eq!(walled.ends, [End::Held; 2]);
+        assert!((walled.nodes[0] + 0.6).abs() < 1e-15 && (walled.nodes[36] - 9.0).abs() < 1e-14);
     }
 
     #[test]
@@ -265,7 +315,7 @@ mod tests {
             values
         };
         let error = |q: usize| {
-            let [coarse, fine] = [q, 2 * q].map(|q| Axis::vertical([0.0, 0.1], 0.1, q, 20.0));
+            let [coarse, fine] = [q, 2 * q].map(|q| Axis::vertical([0.0, 0.1], 0.02, 0.1, q, [FAR; 2]));
             let (from, to) = (field(&coarse), field(&fine));
             let off = fine.carry_from(&coarse).into_iter().zip(&to).map(|(s, t)| (s.apply(&from) - t).abs());
             off.fold(0.0, f64::max)

@@ -1,7 +1,7 @@
 //! How a rigid motion of one plate is spread over the grid.
 //!
 //! Each node follows the point of the plate that is nearest to it, with weights that are 1 on the plate and 0 on the
-//! other plate and at the far boundary. It serves twice: it bends the grid to the pose, and it is the virtual
+//! other plate, at the far boundary above and below and at grounded walls beside the plates. It serves twice: it bends the grid to the pose, and it is the virtual
 //! displacement field of force and torque. Vertical motion is spread linearly across the gap. Sideways motion (the
 //! shortening cos(tilt) of a tilted plate) may be spread smoothly, which leaves the grid lines upright where they meet
 //! the plates, so that cells stay well shaped at the edges of a strongly tilted plate.
@@ -42,6 +42,9 @@ pub struct Carry {
     pub sideways: Vec<f64>,
     /// Weight of vertical motion of each z node.
     pub vertical: Vec<f64>,
+    /// By what both are multiplied at a node, along x and along y: 1, falling to 0 where something beside the plate stands
+    /// still.
+    pub beside: [Vec<f64>; 2],
     /// Plate point nearest to a node, relative to the centre of the facing surface, axis by axis.
     pub point: [Vec<f64>; 3],
     /// Rotation from the plate's own directions to those of the room.
@@ -49,10 +52,12 @@ pub struct Carry {
 }
 
 impl Carry {
-    /// Weights of motion along x, y and z at z node `k`.
+    /// Weights of motion along x, y and z at a node.
     #[inline]
-    pub fn weights(&self, k: usize) -> Vector3 {
-        [self.sideways[k], self.sideways[k], self.vertical[k]]
+    pub fn weights(&self, i: usize, j: usize, k: usize) -> Vector3 {
+        let beside = self.beside[0][i] * self.beside[1][j];
+        let (sideways, vertical) = (beside * self.sideways[k], beside * self.vertical[k]);
+        [sideways, sideways, vertical]
     }
 
     /// Whether the nodes at `k` move at all.
@@ -78,7 +83,7 @@ impl Carry {
     #[inline]
     pub fn displacement(&self, i: usize, j: usize, k: usize) -> Vector3 {
         let p = [self.point[0][i], self.point[1][j], self.point[2][k]];
-        let (lever, weights) = (self.lever(i, j, k), self.weights(k));
+        let (lever, weights) = (self.lever(i, j, k), self.weights(i, j, k));
         let part = |d: usize| weights[d] * (lever[d] - p[d]);
         [part(0), part(1), part(2)]
     }

@@ -5,8 +5,9 @@
 * against schema.json; file name = family; names of cases unique; every value defined under `quantities`, with an
   uncertainty or spread of the same shape; scripts present; every [Key] of the files, the
   scripts and the Rust sources in bibliography.md, every entry there used
-* strips-parallel, discs, pull-in, wedge-ideal, cross-capacitance, guard-gaps and closed-domains in full, with a second
-  route to the wedge formulas and to the rectangle
+* strips-parallel, discs, pull-in, wedge-ideal, disc-wedge, cross-capacitance, guard-gaps and closed-domains in full, with
+  a second route to the wedge formulas, of strips and of discs, and to the rectangle
+* discs: the harmonics against the sum over their charge; coaxial thin pairs of equal and unequal size from Love's equations, two tilted pairs and a thick pair again
 * figures that two files have in common: squares with plates, the 180 degree wedge with coplanar strips, hinged strips with
   tip rise 0 with parallel strips, parallel strips with strips.json
 
@@ -23,9 +24,13 @@ import numpy as np
 
 import closed_domains
 import cross_capacitance
+import disc_wedge
 import discs
+import discs_thick
+import discs_tilted
 import guard_gaps
 import pull_in
+import spheroid
 import store
 import strips_parallel
 import wedge_ideal
@@ -98,8 +103,9 @@ def check_files(docs):
 
 def check_recomputed(docs):
     for family, module in (("strips-parallel", strips_parallel), ("discs", discs), ("pull-in", pull_in),
-                           ("wedge-ideal", wedge_ideal), ("cross-capacitance", cross_capacitance),
-                           ("guard-gaps", guard_gaps), ("closed-domains", closed_domains)):
+                           ("wedge-ideal", wedge_ideal), ("disc-wedge", disc_wedge),
+                           ("cross-capacitance", cross_capacitance), ("guard-gaps", guard_gaps),
+                           ("closed-domains", closed_domains)):
         worst, count = 0.0, 0
         for case in docs[family]["cases"]:
             new = {k: store.plain(v) for k, v in module.compute(case, SimpleNamespace()).items()}
@@ -115,6 +121,10 @@ def check_second_routes():
             a, b = wedge_ideal.lamella(beta, mp.mpf(2)), wedge_ideal.lamella_by_quadrature(beta, mp.mpf(2))
             far = max(far, *(abs(x / y - 1) for x, y in zip(a, b)))
         verdict(far < mp.mpf("1e-20"), f"lamellas against quadrature: {float(far):.0e}")
+        with mp.workdps(15):
+            tilted = mp.mpf("0.3"), mp.mpf("-0.2"), mp.mpf("0.5")
+            far = max(abs(x / y - 1) for x, y in zip(disc_wedge.disc(*tilted), disc_wedge.disc_by_quadrature(*tilted)))
+        verdict(far < 1e-13, f"tilted disc against quadrature: {float(far):.0e}")
         q, t = mp.mpf(2), mp.radians(5)
         _, force, torque = wedge_ideal.sector(mp.mpf(1), q, t)
         by_angle = -mp.diff(lambda s: wedge_ideal.sector(mp.mpf(1), q, s)[0], t) / 2
@@ -124,6 +134,44 @@ def check_second_routes():
         far = max(abs(x / y - 1) for a in (1, 2) for x, y in
                   zip(cross_capacitance.rectangle(mp.mpf(a)), cross_capacitance.rectangle_by_series(mp.mpf(a))))
         verdict(far < mp.mpf("1e-20"), f"cross-capacitance of rectangles against the series: {float(far):.0e}")
+
+
+def check_harmonics():
+    """potential and field of a disc from the harmonics, and from its charge point by point"""
+    axes = discs_tilted.rotation(0.7, -0.4)
+    disc = discs_tilted.Disc(1.3, (0.2, -0.1, 0.4), axes, (48, 24), False)
+    rng = np.random.default_rng(1)
+    w = np.where(np.concatenate([spheroid.degrees(m, disc.top) for m, _ in disc.modes]) < 9,
+                 rng.standard_normal(disc.start[-1]), 0.0)
+    points = np.array([[1.5, 0.7, 1.9], [-0.9, 1.1, -1.2], [0.3, -2.0, 0.5]])
+    apart = points[:, None] - disc.points.reshape(-1, 3)
+    r, q = np.linalg.norm(apart, axis=2), disc.charge(w).ravel()
+    far = max(np.max(np.abs(disc.potential(points, w) - (q / (4 * np.pi * r)).sum(axis=1))),
+              np.max(np.abs(disc.field(points, w) - np.einsum("q,pqk->pk", q, apart / (4 * np.pi * r[..., None] ** 3)))))
+    verdict(far < 1e-12, f"harmonics of a disc, potential and field against the sum over its charge: {far:.1e}")
+
+
+def check_discs(docs):
+    far, count = 0.0, 0
+    for case in docs["discs-tilted"]["cases"]:
+        g, value, bound = case["geometry"], case["value"], case["uncertainty"]
+        if g["tilt_deg"] == g["roll_deg"] == 0 and g["shift"] == [0, 0]:
+            matrix, slope = discs.unequal(g["lower"]["diameter"] / 2, g["upper"]["diameter"] / 2, g["gap"])
+            far = max(far, store.worst(matrix, value["matrix"], bound["matrix"]),
+                      store.worst([0, 0, slope[1, 1] / 2], value["force_grounded"], bound["force_grounded"]))
+            count += 1
+    verdict(far <= 1, f"discs-tilted: {count} coaxial pairs against Love's equations, "
+                      f"worst difference {far:.2g} of the uncertainty")
+    far = 0.0
+    for case in docs["discs-tilted"]["cases"]:
+        if case["name"] in ("gap 0.1 tilt 2", "gap 2 upper 1.5 shift 0.5 -1 tilt 40 roll 20"):
+            new = discs_tilted.compute(case, SimpleNamespace(order=None, check=False))
+            far = max(far, *(store.worst(v, case["value"][k], case["uncertainty"][k]) for k, v in new.items()))
+    verdict(far <= 1, f"discs-tilted: two tilted pairs recomputed, worst difference {far:.2g} of the uncertainty")
+    case = docs["discs-thick"]["cases"][0]
+    new = discs_thick.values(case["geometry"], 18)
+    far = max(store.worst(v, case["value"][k], case["uncertainty"][k]) for k, v in new.items())
+    verdict(far <= 1, f"discs-thick: {case['name']} with fewer panels, difference {far:.2g} of the uncertainty")
 
 
 def check_between_files(docs):
@@ -155,6 +203,8 @@ def main():
     check_files(docs)
     check_recomputed(docs)
     check_second_routes()
+    check_harmonics()
+    check_discs(docs)
     check_between_files(docs)
     count = sum(len(c["value"]) for d in docs.values() for c in d["cases"])
     print(f"{count} values in {len(docs)} files, {len(failures)} failure(s)")

@@ -5,7 +5,7 @@
 use std::io::Write;
 use std::time::Instant;
 
-use tiltgap_meshes::{Arrangement, Dimensions, GridOptions, Plate, Pose, Surroundings};
+use tiltgap_meshes::{Arrangement, Dimensions, GridOptions, Plate, Pose};
 use tiltgap_solver::{assess, Connection, Hinge, Level, LevelParams, Params, Question};
 
 /// Runs of which the median is taken.
@@ -16,8 +16,7 @@ fn bench(beta: f64, roll_deg: f64, thickness_m: f64) -> Arrangement {
     let gap_m: f64 = 0.004;
     let tilt_rad = (beta * gap_m / (plate.length_m / 2.0)).atan();
     let pose = Pose { gap_m, tilt_rad, roll_rad: roll_deg.to_radians(), shift_m: [0.0; 2] };
-    let (surroundings, dimensions) = (Surroundings::Open, Dimensions::Three);
-    Arrangement { lower: plate, upper: plate, pose, surroundings, dimensions }
+    Arrangement::open(plate, plate, pose, Dimensions::Three)
 }
 
 fn median(mut run: impl FnMut() -> f64, runs: usize) -> f64 {

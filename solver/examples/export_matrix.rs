@@ -10,7 +10,7 @@ use std::error::Error;
 use std::io::Write;
 use std::time::Instant;
 
-use tiltgap_meshes::{Arrangement, Dimensions, Grid, GridOptions, Plate, Pose, Surroundings};
+use tiltgap_meshes::{Arrangement, Dimensions, Grid, GridOptions, Plate, Pose};
 use tiltgap_solver::{Level, LevelParams, Matrix, Operator};
 
 fn main() -> Result<(), Box<dyn Error>> {
@@ -21,8 +21,7 @@ fn main() -> Result<(), Box<dyn Error>> {
     let q: usize = q.parse()?;
     let plate = Plate { length_m: 1.0, width_m: 1.0, thickness_m: 0.0 };
     let pose = Pose { gap_m: 0.04, tilt_rad: 1f64.to_radians(), roll_rad: 0.0, shift_m: [0.0; 2] };
-    let (surroundings, dimensions) = (Surroundings::Open, Dimensions::Three);
-    let arrangement = Arrangement { lower: plate, upper: plate, pose, surroundings, dimensions };
+    let arrangement = Arrangement::open(plate, plate, pose, Dimensions::Three);
     let options = GridOptions::suited(&arrangement);
 
     let begun = Instant::now();

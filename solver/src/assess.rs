@@ -5,12 +5,12 @@
 
 use std::time::Instant;
 
-use tiltgap_meshes::{Arrangement, Dimensions, GridOptions, Surroundings, Vector3};
+use tiltgap_meshes::{Arrangement, Dimensions, GridOptions, Vector3, Which};
 
-use crate::corner::cross;
-use crate::family::{Family, Quantities};
+use crate::corner::{cross, minus};
+use crate::family::{Family, Pull, Quantities, Ring};
 use crate::wedge::wedge_factors;
-use crate::Error;
+use crate::{Error, Level, Wrench};
 
 /// Permittivity of vacuum in F/m, CODATA 2022 \[CODATA2022\].
 pub const EPS0: f64 = 8.854_187_818_8e-12;
@@ -96,10 +96,11 @@ pub struct Estimate {
 /// Components along x, y and z.
 pub type Components = [Estimate; 3];
 
-/// The ideal formula: parallel plates without fringe, for the overlap area at zero tilt.
+/// The ideal formula: parallel plates without fringe.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Ideal {
-    /// eps A/d, in F (F/m in two dimensions).
+    /// eps A/d, in F (F/m in two dimensions); A is the overlap at zero tilt, without a guard ring; with a film the gap is
+    /// d = (gap - t) + t/permittivity ratio.
     pub capacitance_f: f64,
     /// eps A V^2/(2 d^2), in N (N/m).
     pub force_n: f64,
@@ -149,7 +150,33 @@ pub struct LevelReport {
     pub seconds: f64,
 }
 
+/// Force and torque on one thing, in SI units (per metre of width in two dimensions).
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct ForceAndTorque {
+    /// Force, in N.
+    pub force_n: Components,
+    /// Torque about the hinge, in N m; none without a hinge.
+    pub torque_hinge_nm: Option<Components>,
+    /// Torque about the centre of the upper plate's facing surface, in N m.
+    pub torque_centre_nm: Components,
+}
+
+/// What a guard ring takes upon itself, and what the beam feels in all.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct GuardReport {
+    /// Charge on the ring over the voltage, in F, in the sense of the plate's capacitance.
+    pub capacitance_f: Estimate,
+    /// What acts on the ring, in the sense of what acts on the plate.
+    pub ring: ForceAndTorque,
+    /// What acts on all that hangs on the beam: the upper plate, with the ring if it is around that.
+    pub beam: ForceAndTorque,
+}
+
 /// The answer, in SI units; in two dimensions per metre of width.
+///
+/// With a guard ring around the upper plate, charge, force and torque are those of that plate alone. With one around the
+/// lower plate the charge is that of the lower plate alone, with its sign turned, and force and torque are what the upper
+/// plate would feel from it alone: those on the lower plate, turned. [`GuardReport`] has the rest.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Assessment {
     /// Maxwell capacitance matrix, in F: `[i][j]` is the charge on i (0 lower, 1 upper) with j at 1 V.
@@ -166,6 +193,8 @@ pub struct Assessment {
     pub torque_hinge_nm: Option<Components>,
     /// Torque on the upper plate about the centre of its facing surface, in N m.
     pub torque_centre_nm: Components,
+    /// What a guard ring takes upon itself; all of the above is then of the plate without it.
+    pub guard: Option<GuardReport>,
     /// The ideal formula.
     pub ideal: Ideal,
     /// The correction factors.
@@ -183,6 +212,44 @@ pub struct Assessment {
 pub fn hinge_offset_m(arrangement: &Arrangement, hinge: &Hinge) -> Vector3 {
     let r = arrangement.pose.tilt_rotation();
     [0, 1, 2].map(|k| tiltgap_meshes::dot(r[k], [-hinge.arm_m, 0.0, hinge.height_m]))
+}
+
+/// The numbers of a level for the given potentials; `offset` leads from the centre of the upper plate to the hinge.
+fn measured(
+    arrangement: &Arrangement,
+    level: &Level,
+    potential: [f64; 2],
+    offset: Option<Vector3>,
+) -> Quantities {
+    let about_hinge = |w: Wrench| Pull {
+        force: w.force,
+        centre: w.torque,
+        hinge: offset.map_or([0.0; 3], |o| minus(w.torque, cross(o, w.force))),
+    };
+    let [[c11, c12], [c21, c22]] = level.matrix;
+    let matrix = [c11, c12, c22];
+    let beam = about_hinge(level.wrench(potential));
+    let of = |row: [f64; 2]| row[0] * potential[0] + row[1] * potential[1];
+    let Some(guard) = arrangement.guard else {
+        return Quantities { charge: of([c21, c22]), matrix, pull: beam, ring: None };
+    };
+    // What acts on the lower side, turned: as the upper plate would feel it about its own centre.
+    let centre = arrangement.pose.centre_m().map(|c| c / arrangement.size_m());
+    let turned =
+        |w: Wrench| Wrench { force: w.force.map(|f| -f), torque: minus(cross(centre, w.force), w.torque) };
+    let alone = level.wrench_on_plate(guard.around, potential);
+    let (charge, whole, plate, both) = match guard.around {
+        Which::Upper => (of(level.plate_charges[1]), of([c21, c22]), alone, level.wrench(potential)),
+        Which::Lower => (
+            -of(level.plate_charges[0]),
+            -of([c11, c12]),
+            turned(alone),
+            turned(level.wrench_on_lower(potential)),
+        ),
+    };
+    let ring = Wrench { force: minus(both.force, plate.force), torque: minus(both.torque, plate.torque) };
+    let ring = Ring { charge: whole - charge, pull: about_hinge(ring), beam };
+    Quantities { charge, matrix, pull: about_hinge(plate), ring: Some(ring) }
 }
 
 /// What has to be multiplied with the numbers of the grid to give SI units (per metre of width in two dimensions).
@@ -216,21 +283,8 @@ impl Question {
             }
         }
         let arrangement = &self.arrangement;
-        for (plate, thickness_m) in
-            [("lower", arrangement.lower.thickness_m), ("upper", arrangement.upper.thickness_m)]
-        {
-            if thickness_m > 0.0 {
-                return wrong(format!(
-                    "the {plate} plate is {thickness_m:e} m thick; this version solves thin plates only, and a thick one \
-                     pulls up to twice the fringe of a thin one: give thickness 0 to solve it as a sheet"
-                ));
-            }
-        }
         let in_the_plane = arrangement.dimensions == Dimensions::Two;
-        if in_the_plane
-            && self.connection == Connection::Grounded
-            && arrangement.surroundings == Surroundings::Open
-        {
+        if in_the_plane && self.connection == Connection::Grounded && arrangement.potential_is_open() {
             return wrong(
                 "per metre of width in open space the grounded connection is not defined (the potential of a charged \
                  line has no zero at infinity); choose the floating connection"
@@ -252,7 +306,7 @@ impl Question {
     /// The ideal formula for this question.
     pub fn ideal(&self) -> Ideal {
         let area = self.arrangement.overlap().area_m2();
-        let gap = self.arrangement.pose.gap_m;
+        let gap = self.arrangement.effective_gap_m();
         let capacitance_f = EPS0 * self.relative_permittivity * area / gap;
         let force_n = capacitance_f * self.voltage_v.powi(2) / (2.0 * gap);
         Ideal { capacitance_f, force_n, torque_nm: self.hinge.map(|h| force_n * h.arm_m) }
@@ -281,19 +335,12 @@ pub fn assess(
     let options = GridOptions::suited(arrangement);
     let size = arrangement.size_m();
     let offset = question.hinge.map(|h| hinge_offset_m(arrangement, &h).map(|c| c / size));
-    let quantities = |level: &crate::Level| {
+    let quantities = |level: &Level| {
         let potential = match question.connection {
             Connection::Grounded => [0.0, 1.0],
             Connection::Floating => level.neutral(),
         };
-        let wrench = level.wrench(potential);
-        let hinge = offset.map(|o| {
-            let of_force = cross(o, wrench.force);
-            [0, 1, 2].map(|d| wrench.torque[d] - of_force[d])
-        });
-        let [[c11, c12], [c21, c22]] = level.matrix;
-        let charge = c21 * potential[0] + c22 * potential[1];
-        Quantities { charge, matrix: [c11, c12, c22], force: wrench.force, centre: wrench.torque, hinge }
+        measured(arrangement, level, potential, offset)
     };
     let family = Family::climb(arrangement, &options, params, &quantities, progress)?;
     let units = question.units();
@@ -303,8 +350,17 @@ pub fn assess(
     let limit = &family.limit;
     let [c11, c12, c22] = limit.matrix.map(|e| scaled(e, units.capacitance_f));
     let capacitance_f = scaled(limit.charge, units.capacitance_f);
-    let force_n = vector(limit.force, units.force_n);
-    let torque_hinge_nm = limit.hinge.map(|t| vector(t, units.torque_nm));
+    let si = |pull: &Pull<Components>| ForceAndTorque {
+        force_n: vector(pull.force, units.force_n),
+        torque_hinge_nm: question.hinge.map(|_| vector(pull.hinge, units.torque_nm)),
+        torque_centre_nm: vector(pull.centre, units.torque_nm),
+    };
+    let ForceAndTorque { force_n, torque_hinge_nm, torque_centre_nm } = si(&limit.pull);
+    let guard = limit.ring.map(|ring| GuardReport {
+        capacitance_f: scaled(ring.charge, units.capacitance_f),
+        ring: si(&ring.pull),
+        beam: si(&ring.beam),
+    });
     let ideal = question.ideal();
     let wedge = wedge_factors(arrangement);
     let factor = |e: Estimate, ideal: f64, wedge: f64| {
@@ -327,7 +383,8 @@ pub fn assess(
         energy_j: scaled(capacitance_f, 0.5 * question.voltage_v.powi(2)),
         force_n,
         torque_hinge_nm,
-        torque_centre_nm: vector(limit.centre, units.torque_nm),
+        torque_centre_nm,
+        guard,
         ideal,
         factors,
         levels: family.levels,

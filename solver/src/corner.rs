@@ -105,6 +105,12 @@ pub fn differences(
     d
 }
 
+/// The cell on sides `s` of a node, by its first node.
+#[inline(always)]
+pub fn cell(at: [usize; 3], s: [usize; 3]) -> [usize; 3] {
+    [0, 1, 2].map(|d| at[d] + s[d] - 1)
+}
+
 /// Calls `act` with the sides (0 below, 1 above) of each of the cells that meet at a node: up to eight.
 #[inline(always)]
 pub fn for_each_octant(at: [usize; 3], shape: [usize; 3], mut act: impl FnMut([usize; 3])) {

@@ -51,56 +51,73 @@ const FIRST_IN_THE_PLANE: f64 = 4.0;
 /// roll and shift.
 const TOLERANCE_PART: f64 = 0.1;
 const TOLERANCE_RANGE: [f64; 2] = [1e-9, 1e-6];
+/// By what the solver tolerance is lowered for a guarded plate.
+const GUARDED_PART: f64 = 0.01;
 /// By what the uncertainty falls at best when one more level is solved: an error of fourth order, and some luck.
 const BEST_STEP: f64 = 0.15;
 /// Memory set aside for a node of the finest level, in bytes: matrix, fields and preconditioner together. Measured peaks
 /// of the whole process are 260 to 300 with half symmetry and 340 with roll; the rest is margin.
 const BYTES_PER_NODE: u64 = 600;
 
-/// Numbers of one level, in units of the grid.
-#[derive(Clone, Copy, Debug)]
-pub struct Quantities {
-    /// Charge on the upper plate at 1 V.
-    pub charge: f64,
-    /// C11, C12, C22.
-    pub matrix: [f64; 3],
-    /// Force on the upper plate.
-    pub force: Vector3,
-    /// Torque about the centre of its facing surface.
-    pub centre: Vector3,
-    /// Torque about the hinge.
-    pub hinge: Option<Vector3>,
+/// Force and torque on one thing, in units of the grid.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Pull<T> {
+    /// Force.
+    pub force: T,
+    /// Torque about the centre of the upper plate's facing surface.
+    pub centre: T,
+    /// Torque about the hinge; zero where there is none.
+    pub hinge: T,
 }
 
-/// Where the numbers stand in a row of [`Quantities`].
-const CHARGE: usize = 0;
-const MATRIX: usize = 1;
-const FORCE: usize = 4;
-const CENTRE: usize = 7;
-const HINGE: usize = 10;
+/// What a guard ring adds, in units of the grid.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Ring<C, T> {
+    /// Charge on the ring at 1 V, in the sense of the plate's.
+    pub charge: C,
+    /// What acts on the ring, in the sense of the plate's.
+    pub pull: Pull<T>,
+    /// What acts on all that hangs on the beam.
+    pub beam: Pull<T>,
+}
+
+/// The numbers of a bench in units of the grid: of one level, or their limits.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Numbers<C, T> {
+    /// Charge on the plate at 1 V, positive if the upper conductor is.
+    pub charge: C,
+    /// C11, C12, C22.
+    pub matrix: [C; 3],
+    /// What acts on the plate, as felt above the gap.
+    pub pull: Pull<T>,
+    /// The guard ring.
+    pub ring: Option<Ring<C, T>>,
+}
+
+/// Numbers of one level.
+pub type Quantities = Numbers<f64, Vector3>;
+
+/// The limit of the family.
+pub type FamilyLimit = Numbers<Estimate, Components>;
 
 impl Quantities {
-    /// All numbers in a row, so that they can be extrapolated alike.
+    /// All numbers in a row, so that they can be extrapolated alike: single ones first, then pulls.
     fn row(&self) -> Vec<f64> {
-        let hinge = self.hinge.unwrap_or_default();
-        [&[self.charge][..], &self.matrix, &self.force, &self.centre, &hinge].concat()
+        let mut row = vec![self.charge, self.matrix[0], self.matrix[1], self.matrix[2]];
+        row.push(self.ring.map_or(0.0, |r| r.charge));
+        let pulls = [Some(self.pull), self.ring.map(|r| r.pull), self.ring.map(|r| r.beam)];
+        for pull in pulls.into_iter().flatten() {
+            row.extend([pull.force, pull.centre, pull.hinge].as_flattened());
+        }
+        row
     }
 }
 
-/// The limit of the family, in units of the grid.
-#[derive(Clone, Copy, Debug)]
-pub struct FamilyLimit {
-    /// Charge on the upper plate at 1 V.
-    pub charge: Estimate,
-    /// C11, C12, C22.
-    pub matrix: [Estimate; 3],
-    /// Force on the upper plate.
-    pub force: Components,
-    /// Torque about the centre of its facing surface.
-    pub centre: Components,
-    /// Torque about the hinge.
-    pub hinge: Option<Components>,
-}
+/// Where the vertical force on the plate stands in a row of [`Quantities`].
+const FORCE_Z: usize = PULLS + 2;
+/// Single numbers in a row, and numbers in a pull.
+const PULLS: usize = 5;
+const IN_PULL: usize = 9;
 
 /// A family climbed far enough.
 pub struct Family {
@@ -114,7 +131,7 @@ pub struct Family {
 
 /// Index in the ladder of the first level that resolves an arrangement and serves the accuracy.
 fn first_level(arrangement: &Arrangement, options: &GridOptions, accuracy: f64) -> usize {
-    let narrow = arrangement.edge_gaps().lowest_corner_m / arrangement.pose.gap_m;
+    let narrow = arrangement.narrowness();
     // Along the plate the nodes stand at the cube of a uniform parameter from the edge.
     let at_edge = CELLS_AT_NARROW_EDGE / (HALF_PLATE_CELLS * narrow.cbrt());
     let [far, scale] = OUTSIDE_AT_LEVEL_2;
@@ -142,36 +159,42 @@ fn largest(v: &Components) -> f64 {
     v.iter().map(|e| e.value.abs()).fold(0.0, f64::max)
 }
 
+/// Limits of a pull, from its part of the row. What the plate's pull is uncertain by is shared with the others, which are
+/// made from the same field.
+fn pull(limits: &[Limit], coarsest: f64) -> Pull<Components> {
+    let part = |n: usize| &limits[3 * n..3 * n + 3];
+    let of = |n: usize| part(n).iter().map(|l| l.value.abs()).fold(0.0, f64::max);
+    let force = of(0);
+    let coarse = if coarsest <= 2.0 { COARSE_FLOOR } else { 0.0 };
+    let shared = part(0).iter().map(|l| SHARED * l.uncertainty).fold(0.0, f64::max);
+    let torque = |n: usize| {
+        let scale = of(n).max(LEVER * force);
+        vector(part(n), FLOOR * scale, shared.max(coarse * scale))
+    };
+    Pull { force: vector(part(0), FLOOR * force, coarse * force), centre: torque(1), hinge: torque(2) }
+}
+
 impl FamilyLimit {
-    fn new(limits: &[Limit], coarsest: f64, with_hinge: bool) -> Self {
+    fn new(limits: &[Limit], coarsest: f64) -> Self {
         let plain =
             |l: &Limit| Estimate { value: l.value, uncertainty: l.uncertainty.max(FLOOR * l.value.abs()) };
-        let matrix = [0, 1, 2].map(|n| plain(&limits[MATRIX + n]));
-        let part = |from: usize| &limits[from..from + 3];
-        let of = |from: usize| part(from).iter().map(|l| l.value.abs()).fold(0.0, f64::max);
-        let force = of(FORCE);
-        let coarse = if coarsest <= 2.0 { COARSE_FLOOR } else { 0.0 };
-        let shared = part(FORCE).iter().map(|l| SHARED * l.uncertainty).fold(0.0, f64::max);
-        let torque = |from: usize| {
-            let scale = of(from).max(LEVER * force);
-            vector(part(from), FLOOR * scale, shared.max(coarse * scale))
+        let [charge, c11, c12, c22, of_ring] = [0, 1, 2, 3, 4].map(|n| plain(&limits[n]));
+        let pulls: Vec<_> = limits[PULLS..].chunks(IN_PULL).map(|part| pull(part, coarsest)).collect();
+        let ring = match pulls[..] {
+            [_, pull, beam] => Some(Ring { charge: of_ring, pull, beam }),
+            _ => None,
         };
-        FamilyLimit {
-            charge: plain(&limits[CHARGE]),
-            matrix,
-            force: vector(part(FORCE), FLOOR * force, coarse * force),
-            centre: torque(CENTRE),
-            hinge: with_hinge.then(|| torque(HINGE)),
-        }
+        FamilyLimit { charge, matrix: [c11, c12, c22], pull: pulls[0], ring }
     }
 
     /// Relative uncertainties that are held against the accuracy asked for: of the force and of the torque, about the
     /// hinge where there is one, else about the centre; a torque counts at least as the force at `lever`.
     fn reached(&self, lever: f64) -> [f64; 2] {
-        let force = largest(&self.force);
-        let torque = self.hinge.unwrap_or(self.centre);
+        let Pull { force, centre, hinge } = self.pull;
+        let scale = largest(&force);
+        let torque = if largest(&hinge) > 0.0 { hinge } else { centre };
         let relative = |e: Estimate, least: f64| e.uncertainty / e.value.abs().max(least);
-        [relative(self.force[2], LEVER * force), relative(torque[1], lever * force)]
+        [relative(force[2], LEVER * scale), relative(torque[1], lever * scale)]
     }
 }
 
@@ -191,6 +214,10 @@ impl Family {
         let mut level_params = LevelParams::default();
         level_params.outer.tolerance =
             (TOLERANCE_PART * params.accuracy).clamp(TOLERANCE_RANGE[0], TOLERANCE_RANGE[1]);
+        if arrangement.guard.is_some() {
+            // The charge of a guarded plate is of first order in the residual, that of a whole conductor of second.
+            level_params.outer.tolerance *= GUARDED_PART;
+        }
         let in_the_plane = arrangement.dimensions == Dimensions::Two;
         // A gap as wide as the plates stretches the outside until its levels follow the expansion late: squares at gaps
         // of 0.5 to 2 sides were off by up to 5 plain uncertainties at levels 3-4-6.
@@ -251,9 +278,9 @@ impl Family {
                     }
                 })
                 .collect();
-            let limit = FamilyLimit::new(&limits, a.0, measured.hinge.is_some());
+            let limit = FamilyLimit::new(&limits, a.0);
             if limit.reached(lever).into_iter().all(|r| r <= params.accuracy) {
-                return Ok(Family { limit, levels, observed_order: limits[FORCE + 2].order });
+                return Ok(Family { limit, levels, observed_order: limits[FORCE_Z].order });
             }
             best = Some(limit);
             before = Some(limits);
@@ -275,7 +302,7 @@ impl Family {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use tiltgap_meshes::{Plate, Pose, Surroundings};
+    use tiltgap_meshes::{Plate, Pose};
 
     #[test]
     fn narrow_edges_and_wide_gaps_start_higher() {
@@ -283,8 +310,7 @@ mod tests {
         let start = |gap_m: f64, near: f64| {
             let tilt_rad = ((1.0 - near) * gap_m / 0.5).asin();
             let pose = Pose { gap_m, tilt_rad, roll_rad: 0.0, shift_m: [0.0; 2] };
-            let (surroundings, dimensions) = (Surroundings::Open, Dimensions::Three);
-            let arrangement = Arrangement { lower: plate, upper: plate, pose, surroundings, dimensions };
+            let arrangement = Arrangement::open(plate, plate, pose, Dimensions::Three);
             LADDER[first_level(&arrangement, &GridOptions::suited(&arrangement), 1e-4)]
         };
         assert_eq!([start(0.05, 1.0), start(0.05, 0.5)], [2, 2]);

@@ -3,7 +3,7 @@
 use std::time::Instant;
 
 use rayon::prelude::*;
-use tiltgap_meshes::{Arrangement, Grid, GridOptions};
+use tiltgap_meshes::{Arrangement, Body, Grid, GridOptions, Which};
 
 use crate::cg::{self, conjugate_gradient, Linear};
 use crate::field::{dots, Field};
@@ -59,8 +59,10 @@ pub struct Level {
     pub grid: Grid,
     /// Fields that belong to 1 V on the lower plate (first) and on the upper plate (second), the other at 0 V.
     pub phi: Field<2>,
-    /// Maxwell capacitance matrix.
+    /// Maxwell capacitance matrix of the two conductors (a plate with its guard ring is one).
     pub matrix: [[f64; 2]; 2],
+    /// Charges on the plates without their guard ring: `[i][j]` is that on plate i with conductor j at 1 V.
+    pub plate_charges: [[f64; 2]; 2],
     /// What the iteration did.
     pub info: cg::Info,
     /// True residual at the end, relative to the energy, measured through the diagonal of the operator.
@@ -113,8 +115,14 @@ impl Level {
             Some(level) => level.carry_to(&grid),
             None => between_the_plates(&grid),
         };
-        for (plate, potential) in [(&grid.lower, [1.0, 0.0]), (&grid.upper, [0.0, 1.0])] {
-            for node in grid.plate_nodes(plate) {
+        for wall in grid.walls() {
+            for node in grid.nodes_of(&wall) {
+                fixed[node] = true;
+                phi[node] = [0.0; 2];
+            }
+        }
+        for (body, potential) in [(&grid.lower, [1.0, 0.0]), (&grid.upper, [0.0, 1.0])] {
+            for node in body.boxes.iter().flat_map(|b| grid.nodes_of(b)) {
                 fixed[node] = true;
                 phi[node] = potential;
             }
@@ -142,12 +150,13 @@ impl Level {
             return Err(Error::NotConverged { iterations, reached: residual, tolerance });
         }
         let matrix = energy_matrix(&operator, &nothing, &phi, &mut r, grid.multiplicity());
+        let plate_charges = plate_charges(&grid, &r, matrix);
         let profile = Profile {
             assembly,
             preparation: prepared - assembly,
             iteration: begun.elapsed().as_secs_f64() - prepared,
         };
-        Ok(Level { grid, phi, matrix, info, residual, profile })
+        Ok(Level { grid, phi, matrix, plate_charges, info, residual, profile })
     }
 
     /// The fields of this level on the grid of a finer one.
@@ -189,14 +198,24 @@ impl Level {
         phi
     }
 
-    /// Force and torque on the upper plate for the given potentials of the lower and the upper plate.
+    /// Force and torque on the upper plate, with its guard ring if it has one, for the given potentials of the lower and the
+    /// upper conductor.
     pub fn wrench(&self, potential: [f64; 2]) -> Wrench {
-        Wrench::new(&self.grid, &self.grid.upper_carry, &self.phi, potential)
+        Wrench::new(&self.grid, &self.grid.upper.carry, &self.phi, potential)
     }
 
-    /// Force and torque on the lower plate, from a virtual displacement of its own.
+    /// Force and torque on the lower plate, with its guard ring if it has one, from a virtual displacement of its own.
     pub fn wrench_on_lower(&self, potential: [f64; 2]) -> Wrench {
-        Wrench::new(&self.grid, &self.grid.lower_carry, &self.phi, potential)
+        Wrench::new(&self.grid, &self.grid.lower.carry, &self.phi, potential)
+    }
+
+    /// Force and torque on a plate alone, past a guard ring that stands still.
+    pub fn wrench_on_plate(&self, which: Which, potential: [f64; 2]) -> Wrench {
+        let body = match which {
+            Which::Lower => &self.grid.lower,
+            Which::Upper => &self.grid.upper,
+        };
+        Wrench::new(&self.grid, body.plate_carry(), &self.phi, potential)
     }
 
     /// Potentials of the plates for a pair without total charge, 1 V apart.
@@ -227,11 +246,11 @@ const DRIFT: f64 = 10.0;
 /// A first guess: linear across the gap between the plates, zero elsewhere.
 fn between_the_plates(grid: &Grid) -> Field<2> {
     let mut phi = vec![[0.0; 2]; grid.nodes()];
-    let up = &grid.upper;
+    let up = &grid.upper.hull;
     for i in up.i[0]..=up.i[1] {
         for j in up.j[0]..=up.j[1] {
-            for k in grid.lower.k[1]..=up.k[0] {
-                let b = grid.upper_carry.vertical[k];
+            for k in grid.lower.hull.k[1]..=up.k[0] {
+                let b = grid.upper.carry.vertical[k];
                 phi[grid.index(i, j, k)] = [1.0 - b, b];
             }
         }
@@ -239,7 +258,23 @@ fn between_the_plates(grid: &Grid) -> Field<2> {
     phi
 }
 
-/// phi^T A phi for the two fields: the Maxwell matrix.
+/// Charges on the plates without their guard ring, from the charges A phi of the nodes; without a guard ring they are
+/// those of the Maxwell matrix, whose error is of second order in the residual.
+fn plate_charges(grid: &Grid, charges: &Field<2>, matrix: [[f64; 2]; 2]) -> [[f64; 2]; 2] {
+    let of = |body: &Body, row: [f64; 2]| {
+        if body.boxes.len() == 1 {
+            return row;
+        }
+        let mut sum = [0.0; 2];
+        for node in grid.nodes_of(body.plate()) {
+            (sum[0], sum[1]) = (sum[0] + charges[node][0], sum[1] + charges[node][1]);
+        }
+        sum.map(|c| c * grid.multiplicity())
+    };
+    [of(&grid.lower, matrix[0]), of(&grid.upper, matrix[1])]
+}
+
+/// phi^T A phi for the two fields: the Maxwell matrix. Leaves A phi in `scratch`.
 fn energy_matrix(
     operator: &Operator,
     nothing: &[bool],

@@ -11,16 +11,21 @@ mod extrapolate;
 mod family;
 mod field;
 mod hold;
+mod holes;
 mod level;
+mod metal;
 mod modes;
 mod operator;
 mod separable;
+mod sheet;
+mod shell;
+mod stack;
 mod wedge;
 mod wrench;
 
 pub use assess::{
-    assess, hinge_offset_m, Assessment, Components, Connection, Estimate, Factor, Factors, Hinge, Ideal,
-    LevelReport, Params, Progress, Question, EPS0,
+    assess, hinge_offset_m, Assessment, Components, Connection, Estimate, Factor, Factors, ForceAndTorque,
+    GuardReport, Hinge, Ideal, LevelReport, Params, Progress, Question, EPS0,
 };
 pub use error::Error;
 pub use extrapolate::{extrapolate, observed_order, Limit};

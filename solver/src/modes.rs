@@ -20,7 +20,7 @@ pub struct Stiffness {
 }
 
 impl Stiffness {
-    /// Of an axis; a far end adds 1/R, the Robin weight of a distant face.
+    /// Of an axis; a far end adds the Robin weight of a distant face.
     pub fn new(axis: &Axis) -> Self {
         let off: Vec<f64> = axis.cells().iter().map(|h| -1.0 / h).collect();
         let n = axis.len();
@@ -29,10 +29,8 @@ impl Stiffness {
             diagonal[k] -= o;
             diagonal[k + 1] -= o;
         }
-        let ends = axis.ends.map(|end| match end {
-            End::Far(distance) => 1.0 / distance,
-            End::Natural => 0.0,
-        });
+        // Nothing is added where the potential is given: that node is no unknown.
+        let ends = axis.ends.map(|end| if end == End::Held { 0.0 } else { end.stiffness() });
         diagonal[0] += ends[0];
         diagonal[n - 1] += ends[1];
         Stiffness { diagonal, off, ends }
@@ -52,8 +50,8 @@ pub struct Modes {
     pub values: Vec<f64>,
     /// Between nodal values and modal coefficients, on all nodes.
     pub transform: Transform,
-    /// Whether the modes are even and odd ones.
-    symmetric: bool,
+    /// First plus last node of the mirror image, where the modes are even and odd ones.
+    centre: Option<usize>,
 }
 
 /// Modes on a range of nodes, and the products with them. On a range that is its own mirror image the modes fold into
@@ -71,16 +69,17 @@ pub enum Transform {
     },
 }
 
-/// Eigenvectors of the symmetric matrix D scaled by `basis`^T M^-1/2 D M^-1/2 `basis`, as nodal vectors.
-fn eigenvectors(stiffness: &Stiffness, masses: &[f64], basis: &DMatrix<f64>) -> DMatrix<f64> {
-    let n = masses.len();
-    let root: Vec<f64> = masses.iter().map(|m| m.sqrt()).collect();
+/// Eigenvectors of the symmetric matrix D on the nodes from `first`, scaled by `basis`^T M^-1/2 D M^-1/2 `basis`, as nodal
+/// vectors.
+fn eigenvectors(stiffness: &Stiffness, masses: &[f64], first: usize, basis: &DMatrix<f64>) -> DMatrix<f64> {
+    let n = basis.nrows();
+    let root: Vec<f64> = masses[first..first + n].iter().map(|m| m.sqrt()).collect();
     let mut scaled = DMatrix::zeros(n, n);
     for k in 0..n {
-        scaled[(k, k)] = stiffness.diagonal[k] / masses[k];
+        scaled[(k, k)] = stiffness.diagonal[first + k] / masses[first + k];
     }
-    for (k, o) in stiffness.off.iter().enumerate() {
-        let value = o / (root[k] * root[k + 1]);
+    for k in 0..n - 1 {
+        let value = stiffness.off[first + k] / (root[k] * root[k + 1]);
         scaled[(k, k + 1)] = value;
         scaled[(k + 1, k)] = value;
     }
@@ -91,13 +90,33 @@ fn eigenvectors(stiffness: &Stiffness, masses: &[f64], basis: &DMatrix<f64>) -> 
     vectors
 }
 
+/// Relative difference up to which two nodes count as mirror images.
+const MIRROR: f64 = 1e-9;
+
+/// Whether the operator on the nodes from `first` to `last` is its own mirror image.
+fn mirrored(stiffness: &Stiffness, masses: &[f64], first: usize, last: usize) -> bool {
+    let same = |a: f64, b: f64| (a - b).abs() <= MIRROR * a.abs();
+    (last - first) % 2 == 0
+        && (first..=last).all(|k| {
+            let other = first + last - k;
+            same(masses[k], masses[other]) && same(stiffness.diagonal[k], stiffness.diagonal[other])
+        })
+}
+
 impl Modes {
-    /// Computes the modes; the cost grows with the cube of the number of nodes.
+    /// Computes the modes; the cost grows with the cube of the number of nodes. Where the potential is given at an end
+    /// of the axis the modes vanish there, and there are fewer of them than nodes.
     pub fn new(axis: &Axis) -> Modes {
-        let n = axis.len();
+        let held = axis.ends.map(|end| usize::from(end == End::Held));
+        Modes::within(axis, held[0], axis.len() - 1 - held[1])
+    }
+
+    /// The modes that live on the nodes from `first` to `last` and vanish on the others.
+    pub fn within(axis: &Axis, first: usize, last: usize) -> Modes {
         let (stiffness, masses) = (Stiffness::new(axis), axis.masses());
+        let n = last + 1 - first;
         let h = n / 2;
-        let symmetric = axis.symmetric() && n % 2 == 1;
+        let symmetric = mirrored(&stiffness, &masses, first, last);
         let vectors = if symmetric {
             let half = 0.5f64.sqrt();
             let (mut even, mut odd) = (DMatrix::zeros(n, h + 1), DMatrix::zeros(n, h));
@@ -106,18 +125,24 @@ impl Modes {
                 (odd[(k, k)], odd[(n - 1 - k, k)]) = (half, -half);
             }
             even[(h, h)] = 1.0;
-            [even, odd].map(|basis| eigenvectors(&stiffness, &masses, &basis)).to_vec()
+            [even, odd].iter().map(|basis| eigenvectors(&stiffness, &masses, first, basis)).collect()
         } else {
-            vec![eigenvectors(&stiffness, &masses, &DMatrix::identity(n, n))]
+            vec![eigenvectors(&stiffness, &masses, first, &DMatrix::identity(n, n))]
         };
         let columns: Vec<Vec<f64>> = vectors
             .iter()
-            .flat_map(|v| v.column_iter().map(|c| c.iter().copied().collect::<Vec<f64>>()))
+            .flat_map(|v| v.column_iter())
+            .map(|c| {
+                let mut nodal = vec![0.0; axis.len()];
+                nodal[first..=last].copy_from_slice(c.as_slice());
+                nodal
+            })
             .collect();
-        let vectors = Array2::from_shape_fn((n, n), |(k, a)| columns[a][k]);
+        let vectors = Array2::from_shape_fn((axis.len(), n), |(k, a)| columns[a][k]);
         let values = columns.iter().map(|v| stiffness.energy(v)).collect();
-        let transform = Transform::new(vectors, symmetric);
-        Modes { values, transform, symmetric }
+        let centre = first + last;
+        let folds = symmetric && centre == axis.len() - 1;
+        Modes { values, transform: Transform::new(vectors, folds), centre: symmetric.then_some(centre) }
     }
 
     /// Number of modes.
@@ -125,11 +150,20 @@ impl Modes {
         self.values.len()
     }
 
+    /// The transform of values on the nodes from `from` to `to` that are first spread over the axis: with E the matrix
+    /// `spread` (those nodes down, all nodes across) and M the masses, E M Q.
+    pub fn spread(&self, from: usize, to: usize, spread: &Array2<f64>, masses: &[f64]) -> Transform {
+        let mut vectors = self.transform.vectors();
+        for (k, mut row) in vectors.outer_iter_mut().enumerate() {
+            row *= masses[k];
+        }
+        Transform::new(spread.dot(&vectors), self.centre == Some(from + to))
+    }
+
     /// The transform on the nodes from `from` to `to`, both included.
     pub fn on(&self, from: usize, to: usize) -> Transform {
         let vectors = self.transform.vectors().slice_axis(Direction(0), Slice::from(from..=to)).to_owned();
-        let centred = from + to == self.len() - 1 && (from + to).is_multiple_of(2);
-        Transform::new(vectors, self.symmetric && centred)
+        Transform::new(vectors, self.centre == Some(from + to))
     }
 }
 
@@ -147,6 +181,14 @@ impl Transform {
         Transform::Folded {
             even: block((h + 1, modes - odd_modes), 0),
             odd: block((h, odd_modes), modes - odd_modes),
+        }
+    }
+
+    /// Number of modes.
+    pub fn modes(&self) -> usize {
+        match self {
+            Transform::Whole(vectors) => vectors.ncols(),
+            Transform::Folded { even, odd } => even.ncols() + odd.ncols(),
         }
     }
 
@@ -231,17 +273,22 @@ pub fn multiply(a: ArrayView2<f64>, b: ArrayView2<f64>, mut c: ArrayViewMut2<f64
 #[cfg(test)]
 mod tests {
     use super::*;
+    use tiltgap_meshes::Beyond;
 
     #[test]
     fn modes_diagonalise_and_transforms_invert_each_other() {
+        let far = Beyond::Open { far: 20.0, decay: 1.0 };
         for axis in [
-            Axis::lateral(&[-0.5, 0.5], 2, false, 20.0),
-            Axis::lateral(&[-0.5, 0.5, -0.4, 0.45], 1, false, 20.0),
-            Axis::lateral(&[0.5], 2, true, 20.0),
+            Axis::lateral(&[-0.5, 0.5], 2, [far; 2]),
+            Axis::lateral(&[-0.5, 0.5, -0.4, 0.45], 1, [far; 2]),
+            Axis::lateral(&[0.5], 2, [Beyond::Mirror, far]),
             Axis::slab(),
+            Axis::lateral(&[-0.5, 0.5], 2, [Beyond::Wall(-0.7), Beyond::Wall(0.7)]),
+            Axis::lateral(&[0.5], 2, [Beyond::Mirror, Beyond::Wall(0.8)]),
         ] {
             let modes = Modes::new(&axis);
             let (n, masses) = (axis.len(), axis.masses());
+            let held = axis.ends.map(|end| end == End::Held);
             let stiffness = Stiffness::new(&axis);
             let mut stiff = Array2::<f64>::zeros((n, n));
             for k in 0..n {
@@ -255,15 +302,19 @@ mod tests {
             let one = q.t().dot(&mass).dot(q);
             let values = q.t().dot(&stiff).dot(q);
             let largest = modes.values.iter().copied().fold(0.0, f64::max);
-            for a in 0..n {
-                for b in 0..n {
+            assert_eq!(modes.len(), n - held.iter().filter(|h| **h).count());
+            for a in 0..modes.len() {
+                for b in 0..modes.len() {
                     let delta = if a == b { 1.0 } else { 0.0 };
                     assert!((one[[a, b]] - delta).abs() < 1e-12);
                     assert!((values[[a, b]] - delta * modes.values[a]).abs() < 1e-13 * largest.max(1.0));
                 }
             }
-            let v = Array2::from_shape_fn((n, 3), |(k, c)| ((k * 7 + c * 5) % 11) as f64 - 4.0);
-            let (mut modal, mut back) = (Array2::zeros((n, 3)), Array2::zeros((n, 3)));
+            let mut v = Array2::from_shape_fn((n, 3), |(k, c)| ((k * 7 + c * 5) % 11) as f64 - 4.0);
+            for (k, _) in [0, n - 1].into_iter().zip(held).filter(|h| h.1) {
+                v.row_mut(k).fill(0.0);
+            }
+            let (mut modal, mut back) = (Array2::zeros((modes.len(), 3)), Array2::zeros((n, 3)));
             modes.transform.forward(mass.dot(&v).view(), modal.view_mut());
             modes.transform.backward(modal.view(), back.view_mut());
             assert!((&back - &v).iter().all(|d| d.abs() < 1e-9));

@@ -4,14 +4,15 @@
 //! symmetric positive matrix A, so that C = phi^T A phi. On the untilted grid A is the usual 7-point stencil; a tilt
 //! adds neighbours across the corners of the coordinate planes (19 points at most, zeros are left out).
 //!
-//! A far boundary contributes n.r/|r|^2 phi (Robin): exact for the field of a charge in space and of a pair of
-//! opposite line charges in the plane.
+//! A far boundary contributes p n.r/|r|^2 phi (Robin), where the field falls off as 1/r^p: exact for the field of a
+//! charge in space and of a pair of opposite line charges in the plane (p = 1), and of both over a grounded plane.
+//! Nodes of plates and grounded walls are rows like any other; who multiplies says which are fixed.
 
 use rayon::prelude::*;
 use sprs::CsMatI;
 use tiltgap_meshes::{dot, End, Grid, Vector3};
 
-use crate::corner::{cross, differences, for_each_octant, minus, positions, Plane, Star};
+use crate::corner::{cell, cross, differences, for_each_octant, minus, positions, Plane, Star};
 use crate::field::{in_order, Field};
 
 /// Sparse matrix with 32-bit columns.
@@ -59,7 +60,7 @@ fn upright(edges: &[[Vector3; 2]; 3]) -> NodeEnergy {
 }
 
 /// Energy at a node from the corners that meet there; none if one of them is folded.
-fn bent(edges: [[Vector3; 2]; 3], at: [usize; 3], shape: [usize; 3]) -> Option<NodeEnergy> {
+fn bent(grid: &Grid, edges: [[Vector3; 2]; 3], at: [usize; 3], shape: [usize; 3]) -> Option<NodeEnergy> {
     let star = Star::new(edges);
     let mut energy = NodeEnergy::default();
     let mut folded = false;
@@ -68,7 +69,7 @@ fn bent(edges: [[Vector3; 2]; 3], at: [usize; 3], shape: [usize; 3]) -> Option<N
         folded |= det.is_nan() || det <= 0.0;
         let normals = star.normals(s);
         // volume G_l.G_m = det/8 (normal_l/det).(normal_m/det)
-        let weight = 1.0 / (8.0 * det);
+        let weight = grid.permittivity(cell(at, s)) / (8.0 * det);
         for l in 0..3 {
             energy.edge[l][s[l]] += weight * dot(normals[l], normals[l]);
         }
@@ -87,12 +88,13 @@ fn bent(edges: [[Vector3; 2]; 3], at: [usize; 3], shape: [usize; 3]) -> Option<N
 fn plane_energy(grid: &Grid, planes: [Option<&Plane<Vector3>>; 3], i: usize) -> Option<Plane<NodeEnergy>> {
     let shape = grid.shape();
     let [_, ny, nz] = shape;
-    let still: Vec<bool> = (0..nz).map(|k| !grid.upper_carry.moves_near(k)).collect();
+    let still: Vec<bool> = (0..nz).map(|k| !grid.upper.carry.moves_near(k)).collect();
     let mut energies = Vec::with_capacity(ny * nz);
     for j in 0..ny {
         for k in 0..nz {
             let edges = differences(planes, j, k, [ny, nz]);
-            energies.push(if still[k] { upright(&edges) } else { bent(edges, [i, j, k], shape)? });
+            let plain = still[k] && !grid.at_film(i, j, k);
+            energies.push(if plain { upright(&edges) } else { bent(grid, edges, [i, j, k], shape)? });
         }
     }
     Some(energies)
@@ -233,16 +235,14 @@ fn rows(grid: &Grid, robin: &[f64], from: usize, to: usize) -> Option<Matrix> {
     Some(Matrix::new((nodes, grid.nodes()), starts, columns, values))
 }
 
-/// Robin weights of the nodes on the far boundary: n.r/|r|^2 over each face of a boundary cell, shared by its nodes.
+/// Robin weights of the nodes on the far boundary: p n.r/|r|^2 over each face of a boundary cell, shared by its nodes.
 fn robin(grid: &Grid) -> Vec<f64> {
     let shape = grid.shape();
     let mut weights = vec![0.0; grid.nodes()];
     for axis in 0..3 {
         let [u, v] = [(axis + 1) % 3, (axis + 2) % 3];
         for (end, kind) in grid.axes[axis].ends.into_iter().enumerate() {
-            if !matches!(kind, End::Far(_)) {
-                continue;
-            }
+            let End::Far { decay, .. } = kind else { continue };
             let fixed = if end == 0 { 0 } else { shape[axis] - 1 };
             for a in 0..shape[u] - 1 {
                 for b in 0..shape[v] - 1 {
@@ -253,11 +253,12 @@ fn robin(grid: &Grid) -> Vec<f64> {
                     });
                     let x = nodes.map(|[i, j, k]| grid.position(i, j, k));
                     let normal = cross(minus(x[2], x[0]), minus(x[1], x[0]));
-                    let mut middle = [0, 1, 2].map(|d| x.iter().map(|p| p[d]).sum::<f64>() / 4.0);
+                    let origin = grid.far_field.origin;
+                    let mut middle = [0, 1, 2].map(|d| x.iter().map(|p| p[d]).sum::<f64>() / 4.0 - origin[d]);
                     if grid.is_cross_section() {
                         middle[1] = 0.0; // the distance counts in the plane of the cross-section
                     }
-                    let weight = dot(normal, middle).abs() / dot(middle, middle) / 4.0;
+                    let weight = decay * dot(normal, middle).abs() / dot(middle, middle) / 4.0;
                     for [i, j, k] in nodes {
                         weights[grid.index(i, j, k)] += weight;
                     }

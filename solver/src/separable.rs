@@ -6,14 +6,15 @@
 //! plate nodes, u = A0^-1 (r - R^T lambda), and lambda such that R u = 0. One forward and one backward transform
 //! serve both solves with A0.
 
-use ndarray::{Array2, Array3, ArrayView2, ArrayViewMut2, Axis as Direction};
+use ndarray::{Array3, ArrayView2, ArrayViewMut2, Axis as Direction};
 use rayon::prelude::*;
 use tiltgap_meshes::{Axis, End, Grid};
 
 use crate::cg::Preconditioner;
 use crate::field::Field;
-use crate::hold::{Hold, PlaneModes};
-use crate::modes::{Modes, Stiffness};
+use crate::hold::Hold;
+use crate::modes::Modes;
+use crate::stack::{Ladder, Stack};
 use crate::Error;
 
 /// Columns in a chunk of the transform along x.
@@ -28,28 +29,31 @@ pub struct Columns {
 }
 
 impl Columns {
-    fn new(x: &Modes, y: &Modes, grid: &Grid) -> Columns {
-        let z = &grid.axes[2];
-        let (mut stiffness, masses, nz) = (Stiffness::new(z), z.masses(), z.len());
-        if grid.axes.iter().all(|axis| axis.ends == [End::Natural; 2]) {
-            // Nothing pins the potential of a closed box, so A0 would be singular. Its floor and ceiling are the plates,
-            // which are held: any value there gives the same answer.
-            stiffness.diagonal[0] += 1.0;
-            stiffness.diagonal[nz - 1] += 1.0;
-        }
+    /// `pinned` is added to both ends along z.
+    fn new(x: &Modes, y: &Modes, z: &Ladder, pinned: f64) -> Columns {
+        let nz = z.rungs.len() + 1;
         let mut pivots = Array3::zeros((x.len(), nz, y.len()));
         pivots.axis_iter_mut(Direction(0)).into_par_iter().enumerate().for_each(|(a, mut slab)| {
             let mut last = vec![0.0; y.len()];
             for (k, mut row) in slab.axis_iter_mut(Direction(0)).enumerate() {
-                let coupling = if k > 0 { stiffness.off[k - 1].powi(2) } else { 0.0 };
+                let below = k.checked_sub(1).map(|cell| (z.rungs[cell], z.halves[cell])).unwrap_or_default();
+                let above = z.rungs.get(k).map(|&rung| (rung, z.halves[k])).unwrap_or_default();
+                let end = match k {
+                    0 => pinned + z.ends[0].stiffness(),
+                    k if k + 1 == nz => pinned + z.ends[1].stiffness(),
+                    _ => 0.0,
+                };
                 for ((pivot, last), lambda) in row.iter_mut().zip(&mut last).zip(&y.values) {
-                    *last =
-                        1.0 / (stiffness.diagonal[k] + (x.values[a] + lambda) * masses[k] - coupling * *last);
+                    let mass = below.1 + above.1;
+                    // Where the potential is given the stiffness is infinite, and the pivot vanishes.
+                    *last = 1.0
+                        / (end + below.0 + above.0 + (x.values[a] + lambda) * mass
+                            - below.0 * below.0 * *last);
                     *pivot = *last;
                 }
             }
         });
-        Columns { pivots, off: stiffness.off }
+        Columns { pivots, off: z.rungs.iter().map(|rung| -rung).collect() }
     }
 
     /// Solves for mode `a` along x in place; row k holds node k along z, `K` right-hand sides by modes along y. The
@@ -108,34 +112,17 @@ impl Separable {
     pub fn new(grid: &Grid, fixed: &[bool], inner_tolerance: f64) -> Separable {
         let axes = [0, 1].map(|d| softened(grid, d));
         let [x, y] = [0, 1].map(|d| Modes::new(&axes[d]));
-        let columns = Columns::new(&x, &y, grid);
-        let (shape, plates) = (grid.shape(), [grid.lower, grid.upper]);
-        let planes: Vec<usize> = plates.iter().flat_map(|p| p.k[0]..=p.k[1]).collect();
-        // The response of the planes to charges on them, mode by mode: G, planes x planes.
-        let (nx, ny, nz) = (x.len(), y.len(), shape[2]);
-        let mut response = vec![Array2::zeros((nx, ny)); planes.len() * planes.len()];
-        for (q, &from) in planes.iter().enumerate() {
-            let columns_of: Vec<Vec<f64>> = (0..nx)
-                .into_par_iter()
-                .map(|a| {
-                    let mut rows = vec![0.0; nz * ny];
-                    rows[from * ny..(from + 1) * ny].fill(1.0);
-                    columns.solve(a, &mut rows, 1, planes[0]);
-                    planes.iter().flat_map(|&to| rows[to * ny..(to + 1) * ny].to_vec()).collect()
-                })
-                .collect();
-            for (a, values) in columns_of.iter().enumerate() {
-                for p in 0..planes.len() {
-                    for b in 0..ny {
-                        response[p * planes.len() + q][[a, b]] = values[p * ny + b];
-                    }
-                }
-            }
-        }
-        let masses = axes.map(|axis| axis.masses());
-        let hold = Hold::new(PlaneModes { planes, response }, &plates, [&x, &y], masses, inner_tolerance);
+        let ladder = Ladder::new(grid);
+        // Nothing pins the potential of a closed box, so A0 would be singular. Its floor and ceiling are the plates, which
+        // are held: any value there gives the same answer.
+        let closed = grid.axes.iter().all(|axis| axis.ends == [End::Natural; 2]);
+        let pinned = if closed { 1.0 } else { 0.0 };
+        let columns = Columns::new(&x, &y, &ladder, pinned);
+        let bodies = [&grid.lower, &grid.upper];
+        let stack = Stack::new(&ladder, bodies.map(|b| b.hull.k), [&x.values, &y.values], pinned);
+        let hold = Hold::new(bodies, [&axes[0], &axes[1]], [&x, &y], &ladder, stack, inner_tolerance);
         let buffers = [0, 1].map(|_| Vec::new());
-        Separable { shape, x, y, columns, hold, fixed: fixed.to_vec(), buffers }
+        Separable { shape: grid.shape(), x, y, columns, hold, fixed: fixed.to_vec(), buffers }
     }
 }
 
@@ -149,8 +136,9 @@ fn softened(grid: &Grid, direction: usize) -> Axis {
     if !grid.is_cross_section() {
         return axis.clone();
     }
-    let (carry, z) = (&grid.upper_carry, &grid.axes[2].nodes);
-    let gap = z[grid.upper.k[0]] - z[grid.lower.k[1]];
+    let (carry, z) = (&grid.upper.carry, &grid.axes[2].nodes);
+    let film = grid.film.map_or(grid.lower.hull.k[1], |f| f.nodes.k[1]);
+    let gap = z[grid.upper.hull.k[0]] - z[film];
     let rho: Vec<f64> =
         carry.point[direction].iter().map(|p| 1.0 + carry.rotation[2][direction] * p / gap).collect();
     let mut nodes = vec![axis.nodes[0]];
@@ -164,12 +152,11 @@ fn softened(grid: &Grid, direction: usize) -> Axis {
 fn along_x(
     from: &[f64],
     to: &mut [f64],
-    n: usize,
+    width: usize,
     transform: impl Fn(ArrayView2<f64>, ArrayViewMut2<f64>) + Sync,
 ) {
-    let width = from.len() / n;
-    let from = ArrayView2::from_shape((n, width), from).expect("n rows");
-    let mut to = ArrayViewMut2::from_shape((n, width), to).expect("n rows");
+    let from = ArrayView2::from_shape((from.len() / width, width), from).expect("rows of the width");
+    let mut to = ArrayViewMut2::from_shape((to.len() / width, width), to).expect("rows of the width");
     to.axis_chunks_iter_mut(Direction(1), COLUMNS)
         .into_par_iter()
         .zip(from.axis_chunks_iter(Direction(1), COLUMNS).into_par_iter())
@@ -178,51 +165,54 @@ fn along_x(
 
 impl<const K: usize> Preconditioner<K> for Separable {
     fn apply(&mut self, r: &[[f64; K]], z: &mut Field<K>) -> Result<usize, Error> {
-        let [nx, ny, nz] = self.shape;
+        let [_, nodes_along_y, nz] = self.shape;
         let Separable { x, y, columns, hold, fixed, buffers, .. } = self;
-        let slab = ny * nz * K;
+        // Transformed along x, and along x and y: what belongs to one mode along x.
+        let (ny, half_way, slab) = (y.len(), nodes_along_y * nz * K, y.len() * nz * K);
         let (first, second) = buffers.split_at_mut(1);
         let (first, second) = (&mut first[0], &mut second[0]);
-        first.resize(nx * slab, 0.0);
-        second.resize(nx * slab, 0.0);
-        along_x(r.as_flattened(), first, nx, |from, to| x.transform.forward(from, to));
-        let planes = hold.planes().to_vec();
+        first.resize(x.len() * half_way, 0.0);
+        second.resize(x.len() * slab, 0.0);
+        along_x(r.as_flattened(), first, half_way, |from, to| x.transform.forward(from, to));
+        let planes = hold.planes();
         let lowest = planes[0];
+        let nodal_dim = (nodes_along_y, nz * K);
         // Per mode along x: transform along y to rows (z, right-hand side) by modes, solve, keep the plate planes.
         let kept: Vec<Vec<f64>> = first
-            .par_chunks(slab)
+            .par_chunks(half_way)
             .zip(second.par_chunks_mut(slab))
             .enumerate()
             .map_init(
                 || vec![0.0; slab],
                 |scratch, (a, (nodal, modal))| {
-                    let nodal = ArrayView2::from_shape((ny, nz * K), nodal).expect("a slab");
+                    let nodal = ArrayView2::from_shape(nodal_dim, nodal).expect("a slab");
                     let rows = ArrayViewMut2::from_shape((nz * K, ny), modal).expect("a slab");
                     y.transform.forward(nodal, rows.reversed_axes());
                     scratch.copy_from_slice(modal);
                     columns.solve(a, scratch, K, lowest);
-                    planes.iter().flat_map(|k| scratch[k * K * ny..(k + 1) * K * ny].to_vec()).collect()
+                    let of =
+                        |r: usize| planes.iter().flat_map(move |k| (k * K + r) * ny..(k * K + r + 1) * ny);
+                    (0..K).flat_map(of).map(|n| scratch[n]).collect()
                 },
             )
             .collect();
         let (charges, iterations) = hold.charges::<K>(&kept)?;
-        second.par_chunks_mut(slab).zip(first.par_chunks_mut(slab)).enumerate().for_each(
+        second.par_chunks_mut(slab).zip(first.par_chunks_mut(half_way)).enumerate().for_each(
             |(a, (modal, nodal))| {
-                for (p, k) in planes.iter().enumerate() {
-                    for r in 0..K {
+                let mut charges = charges[a].chunks_exact(ny);
+                for r in 0..K {
+                    for (k, charges) in planes.iter().zip(&mut charges) {
                         let row = &mut modal[(k * K + r) * ny..(k * K + r + 1) * ny];
-                        for (v, c) in row.iter_mut().zip(charges[p * K + r].row(a)) {
-                            *v -= c;
-                        }
+                        row.iter_mut().zip(charges).for_each(|(v, c)| *v -= c);
                     }
                 }
                 columns.solve(a, modal, K, 0);
                 let rows = ArrayView2::from_shape((nz * K, ny), &*modal).expect("a slab");
-                let nodal = ArrayViewMut2::from_shape((ny, nz * K), nodal).expect("a slab");
+                let nodal = ArrayViewMut2::from_shape(nodal_dim, nodal).expect("a slab");
                 y.transform.backward(rows.reversed_axes(), nodal);
             },
         );
-        along_x(first, z.as_flattened_mut(), nx, |from, to| x.transform.backward(from, to));
+        along_x(first, z.as_flattened_mut(), half_way, |from, to| x.transform.backward(from, to));
         z.par_iter_mut().zip(fixed.par_iter()).for_each(|(z, &fixed)| {
             if fixed {
                 *z = [0.0; K];

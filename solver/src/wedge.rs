@@ -1,7 +1,8 @@
 //! The ideal formula, and what the tilt alone makes of it.
 //!
 //! The wedge factors come from lamellae: over each spot of the overlap the field is that of a small parallel capacitor
-//! of the local gap h = d + sx x + sy y, so that charge, force and torque are the integrals of 1/h, 1/h^2 and
+//! of the local gap h = d + sx x + sy y (with a film under it, of the effective gap, which differs from the true one by
+//! the same length everywhere; of a guarded plate alone), so that charge, force and torque are the integrals of 1/h, 1/h^2 and
 //! (arm + x)/h^2. Along x they are closed forms in e = half the difference of the end gaps over their sum: 1/h gives
 //! artanh(e)/e, 1/h^2 gives 1/(1 - e^2) (an arc of field lines between planes hinged together). Across y, where
 //! a roll makes e vary, Gauss-Legendre panels do the rest.
@@ -81,7 +82,7 @@ pub fn wedge_factors(arrangement: &Arrangement) -> Option<WedgeFactors> {
         return None;
     }
     let pose = &arrangement.pose;
-    let (d, [sx, sy]) = (pose.gap_m, pose.slopes());
+    let (d, [sx, sy]) = (arrangement.effective_gap_m(), pose.slopes());
     let [x, y] = [x.map(|x| x - pose.shift_m[0]), y.map(|y| y - pose.shift_m[1])];
     let at = |y: f64| lamella(x, d + sx * 0.5 * (x[0] + x[1]) + sy * y, sx);
     let mut sum = [0.0; 3];
@@ -119,13 +120,12 @@ pub fn wedge_factors(arrangement: &Arrangement) -> Option<WedgeFactors> {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use tiltgap_meshes::{Dimensions, Plate, Pose, Surroundings};
+    use tiltgap_meshes::{Dimensions, Plate, Pose};
 
     fn bench(tilt: f64, roll: f64, shift_m: [f64; 2]) -> Arrangement {
         let plate = Plate { length_m: 0.1, width_m: 0.08, thickness_m: 0.0 };
         let pose = Pose { gap_m: 0.004, tilt_rad: tilt, roll_rad: roll, shift_m };
-        let (surroundings, dimensions) = (Surroundings::Open, Dimensions::Three);
-        Arrangement { lower: plate, upper: plate, pose, surroundings, dimensions }
+        Arrangement::open(plate, plate, pose, Dimensions::Three)
     }
 
     /// The integrals by brute force: midpoints on a fine grid.

@@ -8,7 +8,7 @@
 use rayon::prelude::*;
 use tiltgap_meshes::{dot, Carry, Grid, Vector3};
 
-use crate::corner::{cross, differences, for_each_octant, minus, positions, Star};
+use crate::corner::{cell, cross, differences, for_each_octant, minus, positions, Star};
 use crate::field::{in_order, Field};
 
 /// Force and torque (about the centre of the plate's facing surface), in units of the grid.
@@ -68,6 +68,7 @@ fn plane_wrench(grid: &Grid, carry: &Carry, phi: &Field<2>, potential: [f64; 2],
                 // With n = det G: det T.G = g (g.n) - |g|^2/2 n, and the gradient is g = sum of delta n/det.
                 let normals = star.normals(s);
                 let inverse = 1.0 / star.determinant(s);
+                let permittivity = grid.permittivity(cell(at, s));
                 let mut g = [0.0; 3];
                 for l in 0..3 {
                     let delta = difference[l][s[l]] * inverse;
@@ -79,11 +80,11 @@ fn plane_wrench(grid: &Grid, carry: &Carry, phi: &Field<2>, potential: [f64; 2],
                 for l in 0..3 {
                     let along = dot(g, normals[l]);
                     for d in 0..3 {
-                        traction[l][s[l]][d] += g[d] * along - half * normals[l][d];
+                        traction[l][s[l]][d] += permittivity * (g[d] * along - half * normals[l][d]);
                     }
                 }
             });
-            let end = |at: [usize; 3]| (carry.lever(at[0], at[1], at[2]), carry.weights(at[2]));
+            let end = |at: [usize; 3]| (carry.lever(at[0], at[1], at[2]), carry.weights(at[0], at[1], at[2]));
             let own = end(at);
             for l in 0..3 {
                 for side in (0..2).filter(|&side| exists(l, side)) {
