@@ -5,7 +5,7 @@
 //! the same sketch.
 
 use rayon::prelude::*;
-use tiltgap_meshes::{GridOptions, Surroundings};
+use tiltgap_meshes::GridOptions;
 use tiltgap_solver::{Connection, Error, Level, LevelParams, Question};
 
 use super::axis::Axis;
@@ -28,15 +28,14 @@ fn coarse(space: &Space, at: &[f64]) -> Result<[f64; 2], Error> {
     let Question { arrangement, connection, .. } = space.question_at(at);
     let options = GridOptions::suited(&arrangement);
     let level = Level::solve(&arrangement, &options, LEVEL, None, &LevelParams::default(), &mut |_, _| {})?;
-    let open = arrangement.surroundings == Surroundings::Open;
     let potential = match connection {
-        Connection::Floating if open => level.neutral(),
-        _ => [0.0, 1.0],
+        Connection::Floating => level.neutral(),
+        Connection::Grounded => [0.0, 1.0],
     };
     let [_, [c21, c22]] = level.matrix;
     let charge = c21 * potential[0] + c22 * potential[1];
     let lamella = space.lamella(at);
-    let gap = arrangement.pose.gap_m / arrangement.size_m();
+    let gap = arrangement.effective_gap_m() / arrangement.size_m();
     let force = -level.wrench(potential).force[2];
     Ok([charge * gap / lamella.capacitance, force * gap * gap / lamella.force])
 }

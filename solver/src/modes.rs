@@ -96,7 +96,7 @@ const MIRROR: f64 = 1e-9;
 /// Whether the operator on the nodes from `first` to `last` is its own mirror image.
 fn mirrored(stiffness: &Stiffness, masses: &[f64], first: usize, last: usize) -> bool {
     let same = |a: f64, b: f64| (a - b).abs() <= MIRROR * a.abs();
-    (last - first) % 2 == 0
+    (last - first).is_multiple_of(2)
         && (first..=last).all(|k| {
             let other = first + last - k;
             same(masses[k], masses[other]) && same(stiffness.diagonal[k], stiffness.diagonal[other])
