@@ -256,6 +256,74 @@ mod tests {
         assert_eq!(Value::from(bench.as_given), file);
     }
 
+    /// The demo bench with a part of its text replaced.
+    fn changed(from: &str, to: &str) -> Result<Bench, String> {
+        assert!(DEMO.contains(from), "{from}");
+        Bench::new(&Source::Demo, &DEMO.replacen(from, to, 1), &[]).map_err(|e| e.to_string())
+    }
+
+    #[test]
+    fn guard_ring_film_and_walls() {
+        let plate = "\"thickness\": \"0 mm\" }";
+        let guard = "\"thickness\": \"2 mm\", \"guard\": { \"slot\": \"0.2 mm\", \"rim\": \"15 mm\" }";
+        let film = "\"film\": { \"thickness\": \"50 um\", \"relative_permittivity\": 2.3 } }";
+        let bench = changed(plate, &format!("{guard}, {film}")).unwrap();
+        assert_eq!(bench.guard, Some(Guard { around: Which::Lower, slot_m: 0.0002, rim_m: 0.015 }));
+        let question = bench.question(Dimensions::Three, bench.connection);
+        assert_eq!(question.arrangement.film.unwrap().permittivity_ratio, 2.3 / 1.00054);
+        assert_eq!(question.arrangement.lower.thickness_m, 0.002);
+        let again = Bench::new(&Source::Demo, &Value::from(bench.as_given.clone()).to_string(), &[]).unwrap();
+        assert_eq!(again, bench);
+        let surroundings = |text: &str| changed("\"kind\": \"open\"", text).map(|b| b.surroundings);
+        assert_eq!(
+            surroundings("\"kind\": \"grounded-floor\", \"below\": \"40 mm\"").unwrap(),
+            Surroundings::GroundedFloor { below_m: 0.04 }
+        );
+        let walls = Clearances { left_m: Some(0.05), above_m: Some(0.1), ..Clearances::default() };
+        assert_eq!(
+            surroundings("\"kind\": \"grounded-box\", \"left\": \"50 mm\", \"above\": \"0.1 m\"").unwrap(),
+            Surroundings::GroundedBox(walls)
+        );
+    }
+
+    #[test]
+    fn keys_that_do_not_fit_together_are_refused() {
+        let floor = |text: &str| changed("\"kind\": \"open\"", text).unwrap_err();
+        for (found, message) in [
+            (
+                floor("\"kind\": \"grounded-floor\""),
+                "\"surroundings.kind\": \"grounded-floor\" needs \"surroundings.below\"; add it, for example \"below\": \
+                 \"40 mm\"",
+            ),
+            (
+                floor("\"kind\": \"grounded-box\""),
+                "\"surroundings.kind\": \"grounded-box\" needs \"surroundings.above\"; add it, for example \"above\": \
+                 \"40 mm\"",
+            ),
+            (
+                floor("\"kind\": \"grounded-floor\", \"below\": \"1 cm\", \"left\": \"1 cm\""),
+                "\"surroundings.left\" means nothing with \"surroundings.kind\": \"grounded-floor\"; leave it out, or \
+                 choose \"grounded-box\"",
+            ),
+            (
+                floor("\"kind\": \"open\", \"below\": \"1 cm\""),
+                "\"surroundings.below\" means nothing with \"surroundings.kind\": \"open\"; leave it out, or choose \
+                 \"grounded-floor\" or \"grounded-box\"",
+            ),
+        ] {
+            assert!(found.ends_with(message), "{found}");
+        }
+        let ring = "\"thickness\": \"0 mm\", \"guard\": { \"slot\": \"1 mm\", \"rim\": \"1 cm\" } }";
+        let both = DEMO.replace("\"thickness\": \"0 mm\" }", ring);
+        let error = Bench::new(&Source::Demo, &both, &[]).unwrap_err().to_string();
+        assert!(error.contains("both plates have a \"guard\""), "{error}");
+        let error = changed(
+            "\"thickness\": \"0 mm\" }",
+            "\"thickness\": \"0 mm\", \"guard\": { \"slot\": \"1 mm\" } }",
+        );
+        assert!(error.unwrap_err().contains("\"lower_plate.guard.rim\" is missing"));
+    }
+
     #[test]
     fn messages_say_where_the_bench_comes_from() {
         let gap = Override { path: "pose.gap", option: "--gap", text: Some("4") };

@@ -96,11 +96,12 @@ fn nearly_touching(report: &Report) -> Result<Option<String>, NotANumber> {
         return Ok(None);
     }
     Ok(Some(format!(
-        "Nearly touching: the {edge} stands {} above the {}, {} % of what is free at the centre. A little dust, bow or \
+        "Nearly touching: the {edge} stands {} above the {}, {} % of {} gap. A little dust, bow or \
          error of tilt there changes force and torque a lot.",
         concise_si(rounded(height_m), 0.0, "m")?,
         if arrangement.film.is_some() { "film" } else { "lower plate" },
-        fixed(100.0 * part, 1)
+        fixed(100.0 * part, 1),
+        if arrangement.film.is_some() { "the free centre" } else { "the centre" }
     )))
 }
 

@@ -23,9 +23,14 @@ pub fn slips(a: &str, b: &str) -> usize {
     rows[1][b.len()]
 }
 
-/// The nearest of the known words; of equally near ones the first. None if there are no words.
+/// Shortest part of a known word that names it.
+const PART: usize = 3;
+
+/// The nearest of the known words: one that has the word as a part before those that are near by slips; of equally near
+/// ones the first. None if there are no words.
 pub fn nearest<'a>(word: &str, known: impl IntoIterator<Item = &'a str>) -> Option<&'a str> {
-    known.into_iter().min_by_key(|k| slips(word, k))
+    let is_part = |k: &str| word.chars().count() >= PART && k.contains(&word.to_lowercase());
+    known.into_iter().min_by_key(|k| (!is_part(k), slips(word, k)))
 }
 
 #[cfg(test)]

@@ -218,7 +218,10 @@ mod tests {
         assert_eq!(json["capacitance_matrix_f"], json!([[26e-12, -24e-12], [-24e-12, 26e-12]]));
         assert_eq!(json["force_n"]["z"], json!({"value": -450e-6, "uncertainty": 3e-9}));
         assert_eq!(json["torque_hinge_nm"]["y"]["value"], 66e-6);
-        assert_eq!(json["ideal"], json!({"capacitance_f": 20e-12, "force_n": 400e-6, "torque_nm": 60e-6}));
+        assert_eq!(
+            json["ideal"],
+            json!({"gap_m": 0.004, "capacitance_f": 20e-12, "force_n": 400e-6, "torque_nm": 60e-6})
+        );
         assert_eq!(json["factors"]["force"]["wedge"], 1.02);
         assert_eq!(json["numerics"]["levels"][1]["nodes"], 66_220);
         assert_eq!(json["numerics"]["peak_memory_bytes"], 46_500_000);

@@ -446,7 +446,9 @@ mod tests {
             ),
             (
                 bench("surroundings", r#"{"kind": "box"}"#),
-                "\"surroundings.kind\" is \"box\"; give \"open\"; the nearest is \"open\"".into(),
+                "\"surroundings.kind\" is \"box\"; give \"open\", \"grounded-floor\" or \"grounded-box\"; the nearest is \
+                 \"grounded-box\""
+                    .into(),
             ),
             (
                 permittivity("\"1.0\""),

@@ -21,8 +21,9 @@ const SHORT_CELLS: usize = 4;
 const SHORT_SEGMENT: f64 = 0.25;
 /// Length over which the outside begins to stretch, in units of the size.
 const OUTSIDE_SCALE: f64 = 0.2;
-/// Edges nearer than this (units of the size) are the same edge up to rounding.
-const SAME_EDGE: f64 = 1e-12;
+/// Edges nearer than this (units of the size) become one grid line: what that changes is within the uncertainty that every
+/// result carries at least, while cells so narrow cost a hundred iterations.
+const SAME_EDGE: f64 = 1e-6;
 
 /// What stands at an end of an axis.
 #[derive(Clone, Copy, Debug, PartialEq)]
