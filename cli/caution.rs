@@ -176,7 +176,12 @@ fn bridge(report: &Report) -> Result<Option<String>, NotANumber> {
     let (question, a) = (&report.job.question, &report.assessment);
     let direct = a.capacitance_matrix_f[1][0];
     let apart = (a.capacitance_f.value + direct.value).abs();
-    if question.arrangement.dimensions == Dimensions::Two || apart <= DIFFERENCE * a.capacitance_f.value {
+    // With a guard ring the matrix has plate and ring as one, and C is of the plate alone.
+    let guarded = question.arrangement.guard.is_some();
+    if guarded
+        || question.arrangement.dimensions == Dimensions::Two
+        || apart <= DIFFERENCE * a.capacitance_f.value
+    {
         return Ok(None);
     }
     Ok(Some(format!(

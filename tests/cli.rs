@@ -372,16 +372,30 @@ proptest! {
     #[test]
     fn any_bench_gives_a_report_or_a_sentence(
         lengths in prop::array::uniform6(length()), gap in "[1-9](\\.[0-9])? mm", tilt in angle(),
-        voltage in "-?[0-9]{1,3} k?V",
+        voltage in "-?[0-9]{1,3} k?V", small in prop::array::uniform4(length()), more in 0..16u32,
     ) {
         let [a1, b1, a2, b2, t, arm] = &lengths;
-        let bench = json!({
+        let [thickness, slot, rim, wall] = &small;
+        let has = |bit: u32| more & (1 << bit) != 0;
+        let mut bench = json!({
             "lower_plate": { "length": a1, "width": b1 },
             "upper_plate": { "length": a2, "width": b2, "thickness": "0 mm" },
             "pose": { "gap": gap, "tilt": tilt, "shift": [t, "0 mm"] },
             "hinge": { "arm": arm },
             "drive": { "voltage": voltage },
         });
+        if has(0) {
+            bench["lower_plate"]["thickness"] = json!(thickness);
+        }
+        if has(1) {
+            bench["upper_plate"]["guard"] = json!({ "slot": slot, "rim": rim });
+        }
+        if has(2) {
+            bench["lower_plate"]["film"] = json!({ "thickness": "0.2 mm", "relative_permittivity": 3 });
+        }
+        if has(3) {
+            bench["surroundings"] = json!({ "kind": "grounded-box", "free_side": wall, "above": wall });
+        }
         report_or_sentence(&["assess", "-", "--per-metre", "--accuracy", "0.1"], bench.to_string().as_bytes())?;
     }
 

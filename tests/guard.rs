@@ -136,3 +136,27 @@ fn a_guarded_plate_goes_to_the_ideal_capacitor() {
     }
     assert!(last < 4e-4);
 }
+
+/// The same in space: both pairs of edges reach half of the slot further, and what a narrow slot takes away from that is
+/// smaller than the uncertainty.
+#[test]
+fn a_guarded_plate_in_space_goes_to_the_ideal_capacitor() {
+    let (slot_m, rim_m) = (1e-4, 0.02);
+    let plate = |margin_m: f64| Plate {
+        length_m: 0.11 + 2.0 * margin_m,
+        width_m: 0.09 + 2.0 * margin_m,
+        thickness_m: 0.0,
+    };
+    let pose = Pose { gap_m: 0.004, tilt_rad: 0.0, roll_rad: 0.0, shift_m: [0.0; 2] };
+    let bench = Arrangement {
+        guard: Some(Guard { around: Which::Lower, slot_m, rim_m }),
+        surroundings: Surroundings::GroundedFloor { below_m: 0.01 },
+        ..Arrangement::open(plate(0.0), plate(slot_m + rim_m), pose, Dimensions::Three)
+    };
+    let solved = solve(bench, Connection::Grounded, DEFAULT).unwrap();
+    let expected = 1.0 + slot_m / 0.11 + slot_m / 0.09;
+    for k in [solved.factors.capacitance, solved.factors.force].map(|k| k.unwrap()) {
+        assert!((k.value - expected).abs() < 1e-4, "{k:?} for {expected}");
+        assert!(k.uncertainty <= 1e-4);
+    }
+}
