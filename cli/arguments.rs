@@ -88,6 +88,17 @@ Examples:
   tiltgap apply table.json --at gap=3.2mm,tilt=0.4deg,voltage=250V
   tiltgap apply table.json --at gap=3.2mm,u_gap=5um,tilt=0.4deg,voltage=250V --json";
 
+const ABOUT_HANDOUT: &str = "\
+A page to print and pin up above the balance: the bench to scale, how to use the factors, the tables
+of force, torque and capacitance, how far the ideal formula is off, cautions, and where the numbers
+come from. The HTML page has a calculator in it and needs no network.";
+
+const HANDOUT_EXAMPLES: &str = "\
+Examples:
+  tiltgap handout table.json                             handout.html
+  tiltgap handout table.json -o balance.tex              for a TeX system; .md, .csv likewise
+  tiltgap handout table.json --quantities force,torque -o - --format md";
+
 /// The whole command line.
 #[derive(Debug, Parser)]
 #[command(
@@ -124,6 +135,9 @@ pub enum Command {
     /// Show a table of correction factors.
     #[command(after_help = EXIT_CODES)]
     Table(TableArguments),
+    /// Make a page for the bench: tables, how to use them, cautions, a calculator.
+    #[command(long_about = ABOUT_HANDOUT, after_help = EXIT_CODES, after_long_help = format!("{HANDOUT_EXAMPLES}\n\n{EXIT_CODES}"))]
+    Handout(HandoutArguments),
     /// Print the JSON Schema of the bench file, for editors.
     Schema,
     /// Print the demo bench file, to begin with.
@@ -352,6 +366,59 @@ pub struct TableArguments {
     /// Write JSON in SI units.
     #[arg(long)]
     pub json: bool,
+}
+
+/// A correction factor.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Factor {
+    /// Of charge and capacitance, k_C.
+    Capacitance,
+    /// Of the force, k_F.
+    Force,
+    /// Of the torque about the hinge, k_T.
+    Torque,
+}
+
+impl Factor {
+    /// Its place in what comes in threes.
+    pub fn number(self) -> usize {
+        self as usize
+    }
+}
+
+/// Form of the output of `handout`.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum HandoutFormat {
+    /// One page that needs nothing else, with a calculator.
+    Html,
+    /// Markdown with pipe tables.
+    Md,
+    /// LaTeX article that stands alone.
+    Tex,
+    /// For a spreadsheet.
+    Csv,
+}
+
+/// Arguments of `handout`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct HandoutArguments {
+    /// The table, from `tabulate` or `join`; `-` reads standard input.
+    #[arg(value_name = "TABLE")]
+    pub table: PathBuf,
+
+    /// File to write, .html, .md, .tex or .csv [default: handout.html]; `-` is standard output.
+    ///
+    /// It appears whole or not at all; a file of that name is replaced.
+    #[arg(long, short, value_name = "FILE", allow_hyphen_values = true)]
+    pub output: Option<PathBuf>,
+
+    /// Format [default: by the file name].
+    #[arg(long, value_name = "FORMAT", value_enum)]
+    pub format: Option<HandoutFormat>,
+
+    /// Which factors, separated by commas [default: all].
+    #[arg(long, value_name = "QUANTITIES", value_enum, value_delimiter = ',')]
+    pub quantities: Vec<Factor>,
 }
 
 /// What a picture shows.

@@ -16,6 +16,7 @@ pub mod effort;
 pub mod error;
 #[cfg(test)]
 mod fixture;
+pub mod handout;
 pub mod inputs;
 pub mod interrupt;
 pub mod key_error;
@@ -130,6 +131,7 @@ fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(
             return if failed == 0 { Ok(()) } else { Err(Error::Rows { failed, all }) };
         }
         Command::Table(arguments) => show::show(arguments, streams.stdin)?,
+        Command::Handout(arguments) => return handout::handout(arguments, streams.stdin, streams.stdout),
         Command::Schema => format!("{:#}\n", schema::bench_schema()),
         Command::Demo => source::DEMO.into(),
     };

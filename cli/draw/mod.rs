@@ -4,6 +4,7 @@
 //! ([`potential`], [`field`], [`charge`] for a bench; [`factors`] and [`error_map`] for a table), which [`render`] makes SVG or
 //! PNG; [`vts`] writes the field itself.
 
+pub mod bench_view;
 pub mod caption;
 pub mod charge;
 pub mod contours;

@@ -164,7 +164,7 @@ impl Space {
 /// A shift along the beam's way that is a smaller part of the largest plate side is left out: it changes the factors by
 /// half of that part (measured), and edges so near to each other make the grid so fine that solving takes ten times as
 /// long or fails.
-const LEAST_SHIFT: f64 = 1e-6;
+pub const LEAST_SHIFT: f64 = 1e-6;
 /// Places along the beam's way at which the pose is looked at before anything is solved.
 const LOOKS: usize = 64;
 /// "gap 2 mm, tilt 1 deg".
