@@ -263,8 +263,8 @@ impl Maker<'_> {
              together. Use each for its own quantity: k_C for charge and capacitance, k_F for force, k_T for torque. They \
              differ; a force corrected with k_C is wrong."
                 .into(),
-            "1.0290(5) means 1.0290 with a standard uncertainty of 0.0005, that of the table alone. Below it the same in \
-             per cent: what has to be added to the ideal value."
+            "1.0290(5) means 1.0290 with a standard uncertainty of 0.0005, that of the table alone. Per cent, 100 (k - 1), are \
+             what has to be added to the ideal value."
                 .into(),
         ];
         let missed: Vec<String> = self
@@ -273,8 +273,8 @@ impl Maker<'_> {
             .map(|n| format!("{} of {}", small(self.survey.linear[*n]), FACTORS[*n].0))
             .collect();
         list.push(format!(
-            "Between the printed values interpolate linearly; that misses by at most {} (looked at in the middle of \
-             the cells). `tiltgap apply` and the calculator interpolate as the table does.",
+            "Straight lines between printed values miss by up to {} (in the middle of the cells). Where that is too \
+             much use `tiltgap apply` or the calculator of the HTML page, which interpolate as the table does.",
             missed.join(", ")
         ));
         let mut blocks = vec![Block::Formulas(formulas), Block::List(list)];
@@ -354,9 +354,9 @@ impl Maker<'_> {
             let factor = &self.table.factors(&[v])[n];
             rows.push((label(range, v), vec![factor_cell(factor)?, Cell::Text(fixed(factor.wedge, 5))]));
         }
-        let (symbol, name) = FACTORS[n];
+        let (symbol, _) = FACTORS[n];
         Ok(vec![Block::Grid(Grid {
-            caption: format!("{symbol}, {name}, and what the tilt alone makes of it"),
+            caption: format!("Full value over ideal value, {symbol}, and what the tilt alone makes of it"),
             corner: Self::title(range),
             across: String::new(),
             columns: vec![symbol.into(), "wedge alone".into()],
@@ -367,7 +367,7 @@ impl Maker<'_> {
     /// Tables over two axes, one for each value of the third.
     fn grids(&self, n: usize) -> Result<Vec<Block>, Error> {
         let [down, across] = [&self.ranges[0], &self.ranges[1]];
-        let (symbol, name) = FACTORS[n];
+        let (symbol, _) = FACTORS[n];
         let mut blocks = Vec::new();
         for block in places(&self.ranges[2..]) {
             let third: Vec<String> = self.ranges[2..]
@@ -395,7 +395,7 @@ impl Maker<'_> {
                     format!(", {} {} to {} {}", across.span.variable.name(), ends[0], ends[1], across.unit)
                 };
                 blocks.push(Block::Grid(Grid {
-                    caption: format!("{symbol}, {name}{}{shown}", third.concat()),
+                    caption: format!("Full value over ideal value, {symbol}{}{shown}", third.concat()),
                     corner: Self::title(down),
                     across: Self::title(across),
                     columns: part.iter().map(|v| label(across, *v)).collect(),
@@ -516,8 +516,7 @@ impl Maker<'_> {
             )),
             Block::List(
                 [
-                    "Put a series resistor next to the supply, so that a touch or a spark cannot draw more than a harmless \
-                     current.",
+                    "Put a series resistor next to the supply, to limit the current of a touch or a spark.",
                     "Switch off and discharge the plates before touching anything; check with a meter.",
                     "Work with one hand; keep the other away from the apparatus and from anything grounded.",
                     "Where others have access, use an interlock that takes the voltage away when the cover is opened.",

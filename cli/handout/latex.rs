@@ -14,6 +14,7 @@ const THICK: f64 = 0.4;
 const PREAMBLE: &str = r"\documentclass[10pt]{article}
 \usepackage[T1]{fontenc}
 \usepackage[utf8]{inputenc}
+\IfFileExists{lmodern.sty}{\usepackage{lmodern}}{}
 \usepackage{booktabs}
 \usepackage{textcomp}
 \IfFileExists{pict2e.sty}{\usepackage{pict2e}}{}

@@ -42,7 +42,8 @@ fn grid(text: &mut String, grid: &Grid, cell: impl Fn(&Cell) -> String, what: &s
     let _ = writeln!(text, "**{}{what}**\n", own(&grid.caption));
     let columns: Vec<String> = grid.columns.iter().map(|c| own(&true_minus(c))).collect();
     let _ = writeln!(text, "| {}{across} | {} |", own(&grid.corner), columns.join(" | "));
-    let _ = writeln!(text, "|---:|{}", "---:|".repeat(grid.columns.len()));
+    let side = if grid.has_factors() { "---:|" } else { "---|" };
+    let _ = writeln!(text, "|{}", side.repeat(1 + grid.columns.len()));
     for (name, cells) in &grid.rows {
         let cells: Vec<String> = cells.iter().map(|c| own(&cell(c))).collect();
         let _ = writeln!(text, "| {} | {} |", own(&true_minus(name)), cells.join(" | "));
