@@ -34,7 +34,8 @@ Units: lengths m, cm, mm, um, in; angles deg, rad, mrad, arcmin; voltage V, kV."
 const ABOUT_DRAW: &str = "\
 A picture of a bench: the potential or the field lines in a cross-section with the plates true to
 scale and their edges enlarged, or the charge density along the plates. Or the field itself, for
-another viewer.
+another viewer. Of a table: a correction factor in curves, or a map of the error of the ideal
+formula. Where a bench is wanted a table will do too, its bench is taken.
 
 In space the cross-section is the plane y = constant through the middle of where the plates overlap.";
 
@@ -44,7 +45,10 @@ Examples:
   tiltgap draw bench.json --what field --tilt 1deg -o field.png
   tiltgap draw bench.json --what charge --per-metre -o charge.svg
   tiltgap draw bench.json --what field -o field.vts      potential and field, for other viewers
-  tiltgap draw --what potential -o - --format svg        to standard output";
+  tiltgap draw --what potential -o - --format svg        to standard output
+  tiltgap draw table.json --what error -o error.svg      of a table from `tabulate`
+  tiltgap draw table.json --what factors --quantity torque -o factors.png";
+
 const ABOUT_TABULATE: &str = "\
 Correction factors of a bench as a table: solved at nodes that the program chooses, interpolated in
 between, and checked at points that are no nodes until the interpolated factors are within the
@@ -120,7 +124,7 @@ pub enum Command {
     /// Charge, force and hinge torque of a bench, beside the ideal formula.
     #[command(long_about = ABOUT_ASSESS, after_help = EXIT_CODES, after_long_help = format!("{EXAMPLES}\n\n{EXIT_CODES}"))]
     Assess(AssessArguments),
-    /// A picture of a bench: potential, field lines or charge density.
+    /// A picture of a bench (potential, field lines, charge) or of a table (factors, error).
     #[command(long_about = ABOUT_DRAW, after_help = EXIT_CODES, after_long_help = format!("{DRAW_EXAMPLES}\n\n{EXIT_CODES}"))]
     Draw(DrawArguments),
     /// Make a table of correction factors over gap and tilt, or along the beam's way.
@@ -430,6 +434,10 @@ pub enum What {
     Field,
     /// Charge density along both faces of both plates.
     Charge,
+    /// Of a table: a correction factor over the gap, a curve for every tilt.
+    Factors,
+    /// Of a table: how far the ideal formula is off, as a map over gap and tilt.
+    Error,
 }
 
 /// Form of the output of `draw`.
@@ -446,7 +454,7 @@ pub enum Format {
 /// Arguments of `draw`.
 #[derive(Clone, Debug, Args)]
 pub struct DrawArguments {
-    /// The bench.
+    /// The bench, or the table.
     #[command(flatten)]
     pub bench: BenchArguments,
 
@@ -463,6 +471,10 @@ pub struct DrawArguments {
     /// Format [default: by the file name].
     #[arg(long, value_name = "FORMAT", value_enum)]
     pub format: Option<Format>,
+
+    /// Which factor of a table [default: force].
+    #[arg(long, value_name = "QUANTITY", value_enum)]
+    pub quantity: Option<Factor>,
 
     /// Level of the grid [default: 12 with --per-metre, else 6; 4 for a .vts].
     ///
@@ -508,10 +520,11 @@ mod tests {
     #[test]
     fn help_fits_the_terminal() {
         let mut command = Arguments::command();
-        for name in ["assess", "draw"] {
+        for name in ["assess", "draw", "handout"] {
             let command = command.find_subcommand_mut(name).unwrap();
             for help in [command.render_help(), command.render_long_help()].map(|h| h.to_string()) {
-                assert!(help.contains("Exit codes:") && help.contains("-2mrad"));
+                assert!(help.contains("Exit codes:"));
+                assert!(name == "handout" || help.contains("-2mrad"));
                 assert!(help.lines().all(|l| l.chars().count() <= 100), "{help}");
             }
         }

@@ -115,6 +115,9 @@ fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(
                 screen::screen(&report)?
             }
         }
+        Command::Draw(arguments) if draw::of_table::shows(arguments.what) => {
+            return draw::of_table::draw(arguments, streams.stdin, streams.stdout);
+        }
         Command::Draw(arguments) => {
             let job = draw::Job::new(arguments, streams.stdin)?;
             return job.run(streams.stdout, streams.stderr, streams.terminal);

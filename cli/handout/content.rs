@@ -14,7 +14,7 @@ use crate::error::Error;
 use crate::ranges::Range;
 use crate::show::{label, places, FACTORS};
 use crate::store::Stored;
-use crate::tables::axis::Variable;
+use crate::tables::axis::{Variable, ROUNDING};
 use crate::tables::space::Kind;
 use crate::tables::table::{Reading, Table, TableFactor};
 
@@ -123,7 +123,10 @@ impl Maker<'_> {
             .iter()
             .zip(at)
             .map(|(r, v)| {
-                let shown = concise(significant(r.shown(*v)), 0.0).unwrap_or_else(|_| label(r, *v));
+                // What is nothing but rounding beside the range is zero.
+                let small = *v / (r.span.to - r.span.from);
+                let v = if small.abs() < ROUNDING { 0.0 } else { *v };
+                let shown = concise(significant(r.shown(v)), 0.0).unwrap_or_else(|_| label(r, v));
                 format!("{} {shown} {}", r.span.variable.name(), r.unit)
             })
             .collect();

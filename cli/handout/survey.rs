@@ -36,11 +36,6 @@ pub struct Survey {
     pub corners: Vec<Vec<f64>>,
 }
 
-/// Error of the ideal formula in per cent of the full value.
-pub fn percent(factor: f64) -> f64 {
-    100.0 * (1.0 / factor - 1.0)
-}
-
 /// All combinations of values, one from each list; the last list runs fastest.
 fn combinations(lists: &[Vec<f64>]) -> Vec<Vec<f64>> {
     let mut all = vec![Vec::new()];
@@ -50,19 +45,12 @@ fn combinations(lists: &[Vec<f64>]) -> Vec<Vec<f64>> {
     all
 }
 
-/// `count` values from end to end.
-pub fn evenly(from: f64, to: f64, count: usize) -> Vec<f64> {
-    let last = (count - 1) as f64;
-    let inner = (0..count - 1).map(|n| from + (to - from) * (n as f64 / last));
-    inner.chain([to]).collect()
-}
-
 impl Survey {
     /// Looks at a table that is printed over these ranges.
     pub fn new(table: &Table, ranges: &[Range]) -> Survey {
         let count = table.in_threes();
         let along = ALONG[ranges.len() - 1];
-        let lists: Vec<Vec<f64>> = ranges.iter().map(|r| evenly(r.span.from, r.span.to, along)).collect();
+        let lists: Vec<Vec<f64>> = ranges.iter().map(|r| r.span.evenly(along)).collect();
         let all = combinations(&lists);
         let mut survey = Survey {
             places: all.len(),
@@ -74,7 +62,7 @@ impl Survey {
         };
         for at in &all {
             for (n, f) in table.factors(at).iter().enumerate() {
-                let end = End { percent: percent(f.factor.value), at: at.clone() };
+                let end = End { percent: f.error_percent(), at: at.clone() };
                 if survey.errors.len() == n {
                     survey.errors.push([end.clone(), end.clone()]);
                 }
@@ -134,7 +122,7 @@ mod tests {
         let survey = Survey::new(&table(), &table_job().ranges);
         let [low, high] = &survey.errors[1];
         assert_eq!(high.at, [0.002, 0.0]);
-        assert!((high.percent - percent(1.014)).abs() < 1e-9);
+        assert!((high.percent - 100.0 * (1.0 / 1.014 - 1.0)).abs() < 1e-9);
         assert_eq!(low.at, [0.002, 1f64.to_radians()]);
         assert_eq!((survey.places, survey.corners.len()), (33 * 33, 4));
         assert!(survey.uncertainty[1] > 2.9e-5 && survey.good[1] == 0.0);

@@ -53,6 +53,15 @@ pub struct Span {
     pub to: f64,
 }
 
+impl Span {
+    /// `count` values from end to end, evenly spaced; the ends are met exactly.
+    pub fn evenly(&self, count: usize) -> Vec<f64> {
+        let last = (count - 1) as f64;
+        let inner = (0..count - 1).map(|n| self.from + (self.to - self.from) * (n as f64 / last));
+        inner.chain([self.to]).collect()
+    }
+}
+
 /// A monotonic function of the variable; its range is mapped to -1 to 1.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub enum Grading {

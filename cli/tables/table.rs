@@ -49,6 +49,13 @@ pub struct TableFactor {
     pub wedge: f64,
 }
 
+impl TableFactor {
+    /// Error of the ideal formula in per cent of the full value; negative if it gives too little.
+    pub fn error_percent(&self) -> f64 {
+        100.0 * (1.0 / self.factor.value - 1.0)
+    }
+}
+
 /// What was read, with standard uncertainties; SI units.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Reading {

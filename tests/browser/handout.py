@@ -214,7 +214,7 @@ def looked_at(browser, name, keep):
     """On a phone nothing but tables scrolls sideways; pictures of all looks for whoever wants to see them."""
     for look, width, scheme in (("light", 1000, "light"), ("dark", 1000, "dark"), ("phone", 390, "light")):
         browser.call("Emulation.setEmulatedMedia", features=[{"name": "prefers-color-scheme", "value": scheme}])
-        browser.call("Emulation.setDeviceMetricsOverride", width=width, height=900, deviceScaleFactor=1, mobile=False)
+        browser.call("Emulation.setDeviceMetricsOverride", width=width, height=900, deviceScaleFactor=1, mobile=look == "phone")
         over = browser.value("document.documentElement.scrollWidth - document.documentElement.clientWidth")
         check(over <= 0, f"{name}: the page is {over} px too wide at {width} px")
         contrast = browser.value(CONTRAST)
