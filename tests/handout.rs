@@ -228,6 +228,40 @@ fn a_table_along_the_hinge_and_one_without_a_hinge() {
 }
 
 #[test]
+fn pictures_of_a_table() {
+    let drawn = |more: &[&str]| {
+        let arguments = [&["draw", table(), "-o", "-", "--format", "svg"], more].concat();
+        let (code, stdout, stderr) = within(&arguments, b"");
+        assert_eq!((code, stderr.as_str()), (0, ""), "{more:?}");
+        Document::parse(&stdout).unwrap();
+        stdout
+    };
+    let torque = drawn(&["--what", "factors", "--quantity", "torque"]);
+    assert!(torque.contains("factor k_T") && torque.contains("tilt −0.3°") && torque.contains("gap (mm)"));
+    let error = drawn(&["--what", "error"]);
+    assert!(error.contains("tilt (°)") && error.contains("id=\"contours\""));
+    // The bench of the table, per metre and floating as the table is.
+    let potential = drawn(&["--what", "potential", "--level", "4"]);
+    assert!(potential.contains("gap 6 mm · tilt 0.5°") && potential.contains("floating"));
+    for (arguments, sentence) in [
+        (
+            &["draw", "--what", "error", "-o", "-", "--format", "svg"][..],
+            "this picture shows a table; name one",
+        ),
+        (&["draw", table(), "--what", "error", "-o", "a.vts"], "and no table; ask for .svg or .png"),
+        (&["draw", table(), "--what", "error", "--gap", "4mm", "-o", "a.svg"], "--gap changes a bench"),
+        (
+            &["draw", table(), "--what", "charge", "--quantity", "force", "-o", "a.svg"],
+            "--quantity goes with",
+        ),
+    ] {
+        let (code, stdout, stderr) = within(arguments, b"");
+        assert_eq!((code, stdout.as_str()), (2, ""), "{stderr}");
+        assert!(stderr.contains(sentence), "{stderr}");
+    }
+}
+
+#[test]
 fn what_will_not_do_is_a_sentence() {
     let scratch = Scratch::new("handout-wrong");
     let path = scratch.file("page.pdf");

@@ -4,7 +4,7 @@ use csv::WriterBuilder;
 
 use super::document::{Block, Cell, Document, Grid};
 
-/// Characters at the beginning of a cell that make spreadsheets calculate \[OWASP-CSV\].
+/// Characters at the beginning of a cell that make spreadsheets calculate (common practice).
 const FORMULA: [char; 8] = ['=', '+', '-', '@', '\t', '\r', '|', '%'];
 
 /// A cell that stays a text. An apostrophe before it is what spreadsheets have for that.
