@@ -16,8 +16,8 @@ cat > bench.json <<'END'
   "drive": { "voltage": "400 V", "connection": "floating" }
 }
 END
-"$program" tabulate bench.json --per-metre --accuracy 1e-3 --gaps 4mm..12mm/9 --tilts -0.3deg..0.9deg/7 -o free.json 2>/dev/null
-"$program" tabulate bench.json --per-metre --accuracy 1e-3 --along-hinge --angles -10mrad..10mrad -o along.json 2>/dev/null
+"$program" tabulate bench.json --per-metre --accuracy 1e-3 --gaps 4mm..12mm/9 --tilts -0.3deg..0.9deg/7 -o free.json &>/dev/null
+"$program" tabulate bench.json --per-metre --accuracy 1e-3 --along-hinge --angles -10mrad..10mrad -o along.json &>/dev/null
 for name in free along; do
     "$program" handout "$name.json" -o "$name.tex"
     if ! pdflatex -interaction=nonstopmode -halt-on-error -no-shell-escape "$name.tex" >"$name.out" 2>&1; then

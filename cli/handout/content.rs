@@ -207,9 +207,9 @@ impl Maker<'_> {
             (Variable::Roll, format!("roll {}", degrees(pose.roll_rad)?)),
         ] {
             let along = job.kind == Kind::AlongHinge;
-            if !self.ranges.iter().any(|r| r.span.variable == variable)
-                && !(along && variable == Variable::Tilt)
-            {
+            let varies = self.ranges.iter().any(|r| r.span.variable == variable);
+            let unused = along && variable == Variable::Tilt;
+            if !(varies || unused) {
                 fixed_at.push(text);
             }
         }

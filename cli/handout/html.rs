@@ -86,14 +86,14 @@ fn calculator(html: &mut String, calculator: &Calculator) {
          novalidate>\n",
     );
     for field in &calculator.fields {
-        let _ = write!(
+        let _ = writeln!(
             html,
             "<div class=\"field\"><label for=\"in-{name}\">{label}, {unit} <span class=\"hint\">{hint}</span></label>\
              <input id=\"in-{name}\" name=\"{name}\" inputmode=\"decimal\" value=\"{value}\" \
              aria-describedby=\"calculator-message\">\
              <label for=\"in-u_{name}\">± its standard uncertainty, {unit}</label>\
              <input id=\"in-u_{name}\" name=\"u_{name}\" inputmode=\"decimal\" value=\"\" \
-             aria-describedby=\"calculator-message\"></div>\n",
+             aria-describedby=\"calculator-message\"></div>",
             name = field.name,
             label = escaped(&field.label),
             unit = escaped(field.unit),
@@ -109,10 +109,10 @@ fn calculator(html: &mut String, calculator: &Calculator) {
     );
     for quantity in calculator.data["quantities"].as_array().into_iter().flatten() {
         let name = quantity["name"].as_str().unwrap_or_default();
-        let _ = write!(
+        let _ = writeln!(
             html,
             "<tr><th scope=\"row\">{name}</th><td id=\"out-{name}-ideal\">–</td><td id=\"out-{name}-factor\">–</td>\
-             <td id=\"out-{name}-corrected\">–</td></tr>\n"
+             <td id=\"out-{name}-corrected\">–</td></tr>"
         );
     }
     let _ = write!(

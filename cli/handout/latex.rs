@@ -8,6 +8,8 @@ use crate::draw::theme;
 
 /// Millimetres that the drawing may be wide; it is scaled to it.
 const WIDTH: f64 = 128.0;
+/// Columns of a table above which they are set closely.
+const WIDE: usize = 5;
 /// Lines that are at least this thick are drawn thick, in mm.
 const THICK: f64 = 0.4;
 
@@ -22,7 +24,7 @@ const PREAMBLE: &str = r"\documentclass[10pt]{article}
 \setlength{\textheight}{235mm}\setlength{\topmargin}{-15mm}\setlength{\headheight}{0pt}\setlength{\headsep}{0pt}
 \setlength{\parindent}{0pt}\setlength{\parskip}{4pt plus 1pt}
 % A letter that the fonts here do not have.
-\newcommand{\letter}[1]{[U+#1]}
+\newcommand{\letter}[1]{[U+#1]\allowbreak{}}
 ";
 
 /// Text with everything escaped that means something in TeX; letters outside of Latin by number.
@@ -64,6 +66,18 @@ pub fn escaped(text: &str) -> String {
     all
 }
 
+/// A title: long words may be broken between pieces of some letters.
+fn title(text: &str) -> String {
+    const PIECE: usize = 12;
+    let word = |word: &str| {
+        let letters: Vec<char> = word.chars().collect();
+        let pieces: Vec<String> =
+            letters.chunks(PIECE).map(|piece| escaped(&piece.iter().collect::<String>())).collect();
+        pieces.join("\\allowbreak{}")
+    };
+    text.split(' ').map(word).collect::<Vec<_>>().join(" ")
+}
+
 /// One of the program's own texts: letters with an index become mathematics, backquotes a typewriter's letters.
 fn own(text: &str) -> String {
     let mut all = escaped(text);
@@ -96,7 +110,8 @@ fn grid(text: &mut String, grid: &Grid) {
     } else {
         format!("@{{}}r*{{{columns}}}{{r}}@{{}}")
     };
-    let _ = writeln!(text, "\\begin{{center}}\\small\\setlength{{\\tabcolsep}}{{4.5pt}}");
+    let between = if columns > WIDE { 2.5 } else { 4.5 };
+    let _ = writeln!(text, "\\begin{{center}}\\small\\setlength{{\\tabcolsep}}{{{between}pt}}");
     let _ = writeln!(text, "{}\\\\[3pt]\n\\begin{{tabular}}{{{layout}}}\n\\toprule", own(&grid.caption));
     if !grid.across.is_empty() {
         let _ = writeln!(text, "& \\multicolumn{{{columns}}}{{c}}{{{}}}\\\\", own(&grid.across));
@@ -171,8 +186,8 @@ pub fn latex(document: &Document) -> String {
     text.push_str("\\begin{document}\n");
     let _ = writeln!(
         text,
-        "{{\\LARGE\\bfseries {}\\par}}\n{}\n",
-        escaped(&document.title),
+        "{{\\LARGE\\bfseries\\raggedright {}\\par}}\n{}\n",
+        title(&document.title),
         own(&document.subtitle)
     );
     for section in &document.sections {
