@@ -289,8 +289,8 @@ fn load_of(values: &Values, rules: &Rules, corrected: &[Corrected]) -> Option<Lo
 }
 
 /// Units of capacitance, force and torque.
-fn units(rules: &Rules) -> [&'static str; 3] {
-    if rules.job.per_metre() {
+pub fn units(per_metre: bool) -> [&'static str; 3] {
+    if per_metre {
         ["F/m", "N/m", "N m/m"]
     } else {
         ["F", "N", "N m"]
@@ -300,7 +300,7 @@ fn units(rules: &Rules) -> [&'static str; 3] {
 /// Names of the columns that are added.
 fn added(rules: &Rules, with_load: bool) -> Vec<String> {
     let count = rules.table.in_threes();
-    let units = units(rules).map(|u| u.replace(' ', "").replace('/', "_per_"));
+    let units = units(rules.job.per_metre()).map(|u| u.replace(' ', "").replace('/', "_per_"));
     let mut names = Vec::new();
     for (group, with_unit) in [("ideal", true), ("factor", false), ("corrected", true)] {
         for n in 0..count {
@@ -462,7 +462,7 @@ fn single_screen(corrected: &[Corrected], rules: &Rules, values: &Values) -> Res
     for ((c, name), unit) in corrected
         .iter()
         .zip(["Capacitance", "Force, downwards", "Torque at hinge, closing"])
-        .zip(units(rules))
+        .zip(units(rules.job.per_metre()))
     {
         let part = |u: f64| {
             let relative = if c.corrected.value == 0.0 { 0.0 } else { (u / c.corrected.value).abs() };

@@ -34,7 +34,8 @@ Units: lengths m, cm, mm, um, in; angles deg, rad, mrad, arcmin; voltage V, kV."
 const ABOUT_DRAW: &str = "\
 A picture of a bench: the potential or the field lines in a cross-section with the plates true to
 scale and their edges enlarged, or the charge density along the plates. Or the field itself, for
-another viewer.
+another viewer. Of a table: a correction factor in curves, or a map of the error of the ideal
+formula. Where a bench is wanted a table will do too, its bench is taken.
 
 In space the cross-section is the plane y = constant through the middle of where the plates overlap.";
 
@@ -44,7 +45,10 @@ Examples:
   tiltgap draw bench.json --what field --tilt 1deg -o field.png
   tiltgap draw bench.json --what charge --per-metre -o charge.svg
   tiltgap draw bench.json --what field -o field.vts      potential and field, for other viewers
-  tiltgap draw --what potential -o - --format svg        to standard output";
+  tiltgap draw --what potential -o - --format svg        to standard output
+  tiltgap draw table.json --what error -o error.svg      of a table from `tabulate`
+  tiltgap draw table.json --what factors --quantity torque -o factors.png";
+
 const ABOUT_TABULATE: &str = "\
 Correction factors of a bench as a table: solved at nodes that the program chooses, interpolated in
 between, and checked at points that are no nodes until the interpolated factors are within the
@@ -88,6 +92,17 @@ Examples:
   tiltgap apply table.json --at gap=3.2mm,tilt=0.4deg,voltage=250V
   tiltgap apply table.json --at gap=3.2mm,u_gap=5um,tilt=0.4deg,voltage=250V --json";
 
+const ABOUT_HANDOUT: &str = "\
+A page to print and pin up above the balance: the bench to scale, how to use the factors, the tables
+of force, torque and capacitance, how far the ideal formula is off, cautions, and where the numbers
+come from. The HTML page has a calculator in it and needs no network.";
+
+const HANDOUT_EXAMPLES: &str = "\
+Examples:
+  tiltgap handout table.json                             handout.html
+  tiltgap handout table.json -o balance.tex              for a TeX system; .md, .csv likewise
+  tiltgap handout table.json --quantities force,torque -o - --format md";
+
 /// The whole command line.
 #[derive(Debug, Parser)]
 #[command(
@@ -109,7 +124,7 @@ pub enum Command {
     /// Charge, force and hinge torque of a bench, beside the ideal formula.
     #[command(long_about = ABOUT_ASSESS, after_help = EXIT_CODES, after_long_help = format!("{EXAMPLES}\n\n{EXIT_CODES}"))]
     Assess(AssessArguments),
-    /// A picture of a bench: potential, field lines or charge density.
+    /// A picture of a bench (potential, field lines, charge) or of a table (factors, error).
     #[command(long_about = ABOUT_DRAW, after_help = EXIT_CODES, after_long_help = format!("{DRAW_EXAMPLES}\n\n{EXIT_CODES}"))]
     Draw(DrawArguments),
     /// Make a table of correction factors over gap and tilt, or along the beam's way.
@@ -124,6 +139,9 @@ pub enum Command {
     /// Show a table of correction factors.
     #[command(after_help = EXIT_CODES)]
     Table(TableArguments),
+    /// Make a page for the bench: tables, how to use them, cautions, a calculator.
+    #[command(long_about = ABOUT_HANDOUT, after_help = EXIT_CODES, after_long_help = format!("{HANDOUT_EXAMPLES}\n\n{EXIT_CODES}"))]
+    Handout(HandoutArguments),
     /// Print the JSON Schema of the bench file, for editors.
     Schema,
     /// Print the demo bench file, to begin with.
@@ -354,6 +372,59 @@ pub struct TableArguments {
     pub json: bool,
 }
 
+/// A correction factor.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Factor {
+    /// Of charge and capacitance, k_C.
+    Capacitance,
+    /// Of the force, k_F.
+    Force,
+    /// Of the torque about the hinge, k_T.
+    Torque,
+}
+
+impl Factor {
+    /// Its place in what comes in threes.
+    pub fn number(self) -> usize {
+        self as usize
+    }
+}
+
+/// Form of the output of `handout`.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum HandoutFormat {
+    /// One page that needs nothing else, with a calculator.
+    Html,
+    /// Markdown with pipe tables.
+    Md,
+    /// LaTeX article that stands alone.
+    Tex,
+    /// For a spreadsheet.
+    Csv,
+}
+
+/// Arguments of `handout`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct HandoutArguments {
+    /// The table, from `tabulate` or `join`; `-` reads standard input.
+    #[arg(value_name = "TABLE")]
+    pub table: PathBuf,
+
+    /// File to write, .html, .md, .tex or .csv [default: handout.html]; `-` is standard output.
+    ///
+    /// It appears whole or not at all; a file of that name is replaced.
+    #[arg(long, short, value_name = "FILE", allow_hyphen_values = true)]
+    pub output: Option<PathBuf>,
+
+    /// Format [default: by the file name].
+    #[arg(long, value_name = "FORMAT", value_enum)]
+    pub format: Option<HandoutFormat>,
+
+    /// Which factors, separated by commas [default: all].
+    #[arg(long, value_name = "QUANTITIES", value_enum, value_delimiter = ',')]
+    pub quantities: Vec<Factor>,
+}
+
 /// What a picture shows.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
 pub enum What {
@@ -363,6 +434,10 @@ pub enum What {
     Field,
     /// Charge density along both faces of both plates.
     Charge,
+    /// Of a table: a correction factor over the gap, a curve for every tilt.
+    Factors,
+    /// Of a table: how far the ideal formula is off, as a map over gap and tilt.
+    Error,
 }
 
 /// Form of the output of `draw`.
@@ -379,7 +454,7 @@ pub enum Format {
 /// Arguments of `draw`.
 #[derive(Clone, Debug, Args)]
 pub struct DrawArguments {
-    /// The bench.
+    /// The bench, or the table.
     #[command(flatten)]
     pub bench: BenchArguments,
 
@@ -396,6 +471,10 @@ pub struct DrawArguments {
     /// Format [default: by the file name].
     #[arg(long, value_name = "FORMAT", value_enum)]
     pub format: Option<Format>,
+
+    /// Which factor of a table [default: force].
+    #[arg(long, value_name = "QUANTITY", value_enum)]
+    pub quantity: Option<Factor>,
 
     /// Level of the grid [default: 12 with --per-metre, else 6; 4 for a .vts].
     ///
@@ -441,10 +520,11 @@ mod tests {
     #[test]
     fn help_fits_the_terminal() {
         let mut command = Arguments::command();
-        for name in ["assess", "draw"] {
+        for name in ["assess", "draw", "handout"] {
             let command = command.find_subcommand_mut(name).unwrap();
             for help in [command.render_help(), command.render_long_help()].map(|h| h.to_string()) {
-                assert!(help.contains("Exit codes:") && help.contains("-2mrad"));
+                assert!(help.contains("Exit codes:"));
+                assert!(name == "handout" || help.contains("-2mrad"));
                 assert!(help.lines().all(|l| l.chars().count() <= 100), "{help}");
             }
         }

@@ -10,6 +10,7 @@ use crate::concise::NotANumber;
 use crate::draw::output::OutputError;
 use crate::draw::render::RenderError;
 use crate::draw::DrawError;
+use crate::handout::HandoutError;
 use crate::progress::grouped;
 use crate::ranges::RangeError;
 use crate::readings::ReadingsError;
@@ -44,6 +45,9 @@ pub enum Error {
     /// The options of `draw` are at fault.
     #[error(transparent)]
     Draw(#[from] DrawError),
+    /// The options of `handout` are at fault.
+    #[error(transparent)]
+    Handout(#[from] HandoutError),
     /// A file could not be written.
     #[error(transparent)]
     File(#[from] OutputError),
@@ -215,7 +219,7 @@ impl Error {
         use tiltgap_solver::Error as Solver;
         match self {
             Error::Job(JobError::OutOfReach { .. }) => NOT_REACHED,
-            Error::Bench(_) | Error::Job(_) | Error::Draw(_) => BAD_INPUT,
+            Error::Bench(_) | Error::Job(_) | Error::Draw(_) | Error::Handout(_) => BAD_INPUT,
             Error::File(OutputError::Name { .. }) => BAD_INPUT,
             Error::Solver(Solver::Arrangement(_) | Solver::Question(_)) => BAD_INPUT,
             Error::Solver(Solver::NotConverged { .. } | Solver::AccuracyNotReached { .. }) => NOT_REACHED,

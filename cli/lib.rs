@@ -16,6 +16,7 @@ pub mod effort;
 pub mod error;
 #[cfg(test)]
 mod fixture;
+pub mod handout;
 pub mod inputs;
 pub mod interrupt;
 pub mod key_error;
@@ -114,6 +115,9 @@ fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(
                 screen::screen(&report)?
             }
         }
+        Command::Draw(arguments) if draw::of_table::shows(arguments.what) => {
+            return draw::of_table::draw(arguments, streams.stdin, streams.stdout);
+        }
         Command::Draw(arguments) => {
             let job = draw::Job::new(arguments, streams.stdin)?;
             return job.run(streams.stdout, streams.stderr, streams.terminal);
@@ -130,6 +134,7 @@ fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(
             return if failed == 0 { Ok(()) } else { Err(Error::Rows { failed, all }) };
         }
         Command::Table(arguments) => show::show(arguments, streams.stdin)?,
+        Command::Handout(arguments) => return handout::handout(arguments, streams.stdin, streams.stdout),
         Command::Schema => format!("{:#}\n", schema::bench_schema()),
         Command::Demo => source::DEMO.into(),
     };

@@ -163,9 +163,7 @@ impl Range {
     pub fn printed_values(&self) -> Vec<f64> {
         let Span { from, to, variable } = self.span;
         if let Some(count) = self.printed {
-            let last = (count - 1) as f64;
-            let inner = (0..count).map(|n| from + (to - from) * (n as f64 / last));
-            return inner.take(count - 1).chain([to]).collect();
+            return self.span.evenly(count);
         }
         let (low, high) = (self.shown(from), self.shown(to));
         let step = round_step(high - low);

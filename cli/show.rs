@@ -20,7 +20,7 @@ use crate::tables::space::Kind;
 use crate::tables::table::{Table, TableFactor, NAMES};
 
 /// Symbols and names of the three factors.
-const FACTORS: [(&str, &str); 3] =
+pub const FACTORS: [(&str, &str); 3] =
     [("k_C", "capacitance and charge"), ("k_F", "force"), ("k_T", "torque about the hinge")];
 
 /// Does the work.
@@ -57,7 +57,7 @@ pub fn places(ranges: &[Range]) -> Vec<Vec<f64>> {
 }
 
 /// A value of an axis as it is shown.
-fn label(range: &Range, v: f64) -> String {
+pub fn label(range: &Range, v: f64) -> String {
     fixed(range.shown(v), range.decimals())
 }
 

@@ -8,6 +8,7 @@ mod discrete;
 mod draw;
 mod film;
 mod guard;
+mod handout;
 mod ideal_limit;
 mod operator;
 mod plates;

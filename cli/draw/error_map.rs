@@ -28,11 +28,13 @@ pub struct ErrorMap {
     pub title: String,
     /// Lines below the title.
     pub lines: Vec<String>,
-    /// Gaps, ascending, in mm.
-    pub gaps_mm: Vec<f64>,
-    /// Tilts, ascending, in degrees.
-    pub tilts_deg: Vec<f64>,
-    /// Error in per cent, a row of gaps for every tilt.
+    /// The two axes with their units, for example "gap (mm)" and "tilt (°)".
+    pub axes: [String; 2],
+    /// Places along the first, ascending.
+    pub x: Vec<f64>,
+    /// Places along the second, ascending.
+    pub y: Vec<f64>,
+    /// Error in per cent, a row along the first axis for every place on the second.
     pub percent: Vec<Vec<f64>>,
 }
 
@@ -59,7 +61,7 @@ fn colour(percent: f64, most: f64) -> RGBColor {
 /// # Panics
 /// If the rows do not fit the axes.
 pub fn error_map(data: &ErrorMap) -> Sheet {
-    let (columns, rows) = (data.gaps_mm.len(), data.tilts_deg.len());
+    let (columns, rows) = (data.x.len(), data.y.len());
     assert!(
         data.percent.len() == rows && data.percent.iter().all(|r| r.len() == columns),
         "rows of other axes"
@@ -79,13 +81,13 @@ pub fn error_map(data: &ErrorMap) -> Sheet {
     let panel = Panel {
         corner: [LEFT, top],
         size: [theme::WIDTH - LEFT - RIGHT, HEIGHT],
-        x: Scale::linear("gap (mm)", range(&data.gaps_mm)),
-        y: Scale::linear("tilt (°)", range(&data.tilts_deg)),
+        x: Scale::linear(&data.axes[0], range(&data.x)),
+        y: Scale::linear(&data.axes[1], range(&data.y)),
     };
     let mut sheet = caption.sheet(top + HEIGHT + BELOW + theme::MARGIN);
     sheet.layer("error");
     let points: Vec<Point> =
-        data.tilts_deg.iter().flat_map(|t| data.gaps_mm.iter().map(|g| panel.place([*g, *t]))).collect();
+        data.y.iter().flat_map(|t| data.x.iter().map(|g| panel.place([*g, *t]))).collect();
     let levels = levels(&values);
     let contours = Mapped { columns, rows, values: &values, points: &points }.levels(&levels);
     // The band between two contours has the colour of its end that is farther from zero.
@@ -186,8 +188,9 @@ mod tests {
         ErrorMap {
             title: "synthetic".into(),
             lines: vec!["Error of the ideal torque".into()],
-            gaps_mm,
-            tilts_deg,
+            axes: ["gap (mm)", "tilt (°)"].map(String::from),
+            x: gaps_mm,
+            y: tilts_deg,
             percent,
         }
     }

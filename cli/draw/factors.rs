@@ -1,4 +1,4 @@
-//! Picture of a correction factor over the gap, a curve for every tilt, with bands of uncertainty.
+//! Picture of a correction factor over the gap (or another axis), a curve for every tilt, with bands of uncertainty.
 
 use super::caption::Caption;
 use super::panel::{legend, Entry, Panel, Scale, BELOW, LEFT, RIGHT};
@@ -21,9 +21,9 @@ const COLUMNS: usize = 3;
 pub struct Curve {
     /// What it belongs to, for example "tilt 0.4°".
     pub name: String,
-    /// The factor at every gap.
+    /// The factor at every place.
     pub values: Vec<f64>,
-    /// Its standard uncertainty at every gap.
+    /// Its standard uncertainty at every place.
     pub uncertainties: Vec<f64>,
 }
 
@@ -36,8 +36,10 @@ pub struct FactorCurves {
     pub lines: Vec<String>,
     /// What the factor is called, for example "force factor k_F".
     pub factor: String,
-    /// Gaps, ascending, in mm.
-    pub gaps_mm: Vec<f64>,
+    /// Axis along which they run, with its unit, for example "gap (mm)".
+    pub along: String,
+    /// Places on it, ascending.
+    pub places: Vec<f64>,
     /// Curves in order of what distinguishes them.
     pub curves: Vec<Curve>,
 }
@@ -45,31 +47,31 @@ pub struct FactorCurves {
 /// The picture.
 ///
 /// # Panics
-/// If a curve has not one value and one uncertainty for every gap.
+/// If a curve has not one value and one uncertainty for every place.
 pub fn factors(data: &FactorCurves) -> Sheet {
-    let gaps = &data.gaps_mm;
+    let places = &data.places;
     for curve in &data.curves {
         assert_eq!(
             (curve.values.len(), curve.uncertainties.len()),
-            (gaps.len(), gaps.len()),
+            (places.len(), places.len()),
             "{}",
             curve.name
         );
     }
     let band = |c: &Curve, n: usize, sign: f64| c.values[n] + sign * COVERAGE * c.uncertainties[n];
     let ends =
-        data.curves.iter().flat_map(|c| (0..gaps.len()).flat_map(|n| [band(c, n, -1.0), band(c, n, 1.0)]));
+        data.curves.iter().flat_map(|c| (0..places.len()).flat_map(|n| [band(c, n, -1.0), band(c, n, 1.0)]));
     let (low, high) = ends.fold((1.0f64, 1.0f64), |(l, h), v| (l.min(v), h.max(v)));
     let blank = BLANK * (high - low).max(f64::EPSILON);
     let mut lines = data.lines.clone();
     lines.push("Bands: two standard uncertainties (numerical) on either side".into());
     let caption = Caption::new(&data.title, &lines);
     let top = caption.height();
-    let [first, last] = [gaps.first(), gaps.last()].map(|g| g.copied().unwrap_or(0.0));
+    let [first, last] = [places.first(), places.last()].map(|g| g.copied().unwrap_or(0.0));
     let panel = Panel {
         corner: [LEFT, top],
         size: [theme::WIDTH - LEFT - RIGHT, HEIGHT],
-        x: Scale::linear("gap (mm)", [first, if last > first { last } else { first + 1.0 }]),
+        x: Scale::linear(&data.along, [first, if last > first { last } else { first + 1.0 }]),
         y: Scale::linear(&data.factor, [low - blank, high + blank]),
     };
     let legend_top = top + HEIGHT + BELOW + 1.0;
@@ -81,12 +83,12 @@ pub fn factors(data: &FactorCurves) -> Sheet {
     sheet.layer("factors");
     for (n, curve) in data.curves.iter().enumerate() {
         let colour = theme::curve(n, data.curves.len());
-        let edge = |sign: f64| (0..gaps.len()).map(move |m| [gaps[m], band(curve, m, sign)]);
+        let edge = |sign: f64| (0..places.len()).map(move |m| [places[m], band(curve, m, sign)]);
         let around: Vec<_> = edge(1.0).chain(edge(-1.0).rev()).map(|p| panel.place(p)).collect();
         sheet.veil(around, colour, BAND);
     }
     for (n, curve) in data.curves.iter().enumerate() {
-        let line: Vec<_> = gaps.iter().zip(&curve.values).map(|(g, v)| panel.place([*g, *v])).collect();
+        let line: Vec<_> = places.iter().zip(&curve.values).map(|(g, v)| panel.place([*g, *v])).collect();
         sheet.line(line, theme::curve(n, data.curves.len()), theme::CURVE);
     }
     sheet.layer("axes");
@@ -130,7 +132,8 @@ mod tests {
             lines: vec!["Force factor over the gap".into()],
             factor: "force factor k_F".into(),
             curves: [0.0, 0.3, 0.6, 0.9].map(curve).to_vec(),
-            gaps_mm,
+            along: "gap (mm)".into(),
+            places: gaps_mm,
         }
     }
 

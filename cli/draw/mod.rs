@@ -1,9 +1,10 @@
-//! The job `draw`: a bench in, a picture or a field file out.
+//! The job `draw`: a bench or a table in, a picture or a field file out.
 //!
-//! [`Job::new`] checks, [`Job::run`] solves one level and draws it. A picture is a [`sheet`] of marks in millimetres
+//! [`Job::new`] checks a bench, [`Job::run`] solves one level and draws it; [`of_table`] draws a table. A picture is a [`sheet`] of marks in millimetres
 //! ([`potential`], [`field`], [`charge`] for a bench; [`factors`] and [`error_map`] for a table), which [`render`] makes SVG or
 //! PNG; [`vts`] writes the field itself.
 
+pub mod bench_view;
 pub mod caption;
 pub mod charge;
 pub mod contours;
@@ -11,6 +12,7 @@ pub mod error_map;
 pub mod factors;
 pub mod field;
 pub mod lines;
+pub mod of_table;
 pub mod output;
 pub mod panel;
 pub mod potential;
@@ -61,6 +63,24 @@ pub enum DrawError {
         "--what charge: a .vts file holds the potential and the field in space; ask for --what field, or for .svg or .png"
     )]
     ChargeAsField,
+    /// A picture of a table without one.
+    #[error("this picture shows a table; name one, or make it with `tiltgap tabulate`")]
+    NoTable,
+    /// A bench where a table is needed.
+    #[error("{0:?} is no table, which this picture shows; make one of a bench with `tiltgap tabulate`")]
+    ABench(String),
+    /// An option that a picture of a table does not have.
+    #[error("{0} changes a bench, but the picture shows a table, in which it is settled; leave it out")]
+    NotOfATable(&'static str),
+    /// A factor where a bench is shown.
+    #[error("--quantity goes with --what factors and --what error; leave it out")]
+    NotOfABench,
+    /// A map needs two axes.
+    #[error("this table is over the {0} alone, and a map needs two axes; ask for --what factors")]
+    OneAxis(&'static str),
+    /// A table has no place in the field file.
+    #[error("a .vts file holds the potential and the field in space, and no table; ask for .svg or .png")]
+    TableAsField,
     /// The level is no number in the range.
     #[error("--level: {} will not do; give a whole number from 2 to 32, for example 6", quoted(.0))]
     Level(String),
@@ -77,6 +97,24 @@ pub enum DrawError {
         /// What it would take.
         megabytes: u64,
     },
+}
+
+/// In which form the output is asked for.
+///
+/// # Errors
+/// If nothing says so, or the form does not go where it shall.
+pub fn format(arguments: &DrawArguments, target: &Target) -> Result<Format, DrawError> {
+    let named = match target.extension().as_deref() {
+        Some("svg") => Some(Format::Svg),
+        Some("png") => Some(Format::Png),
+        Some("vts") => Some(Format::Vts),
+        _ => None,
+    };
+    let format = arguments.format.or(named).ok_or_else(|| DrawError::NoFormat(target.to_string()))?;
+    if format == Format::Png && matches!(target, Target::Stdout) {
+        return Err(DrawError::PixelsToStdout);
+    }
+    Ok(format)
 }
 
 /// A checked job.
@@ -101,15 +139,9 @@ impl Job {
     /// Whatever of it is wrong, the arrangement of the plates included.
     pub fn new(arguments: &DrawArguments, stdin: &mut dyn Read) -> Result<Job, Error> {
         let target = Target::new(&arguments.output);
-        let named = match target.extension().as_deref() {
-            Some("svg") => Some(Format::Svg),
-            Some("png") => Some(Format::Png),
-            Some("vts") => Some(Format::Vts),
-            _ => None,
-        };
-        let format = arguments.format.or(named).ok_or_else(|| DrawError::NoFormat(target.to_string()))?;
-        if format == Format::Png && matches!(target, Target::Stdout) {
-            return Err(DrawError::PixelsToStdout.into());
+        let format = format(arguments, &target)?;
+        if arguments.quantity.is_some() {
+            return Err(DrawError::NotOfABench.into());
         }
         if format == Format::Vts && arguments.what == What::Charge {
             return Err(DrawError::ChargeAsField.into());
@@ -119,7 +151,10 @@ impl Job {
             number.filter(|n| LEVELS.contains(n)).ok_or_else(|| DrawError::Level(text.into()))
         });
         let asked = asked.transpose()?;
-        let setup = Setup::new(&arguments.bench, stdin)?;
+        let setup = match of_table::bench_of_table(&arguments.bench) {
+            Some((options, bench)) => Setup::new(&options, &mut bench.as_bytes())?,
+            None => Setup::new(&arguments.bench, stdin)?,
+        };
         setup.question.check()?;
         let level = asked.unwrap_or(match (setup.question.arrangement.dimensions, format) {
             (Dimensions::Two, _) => LEVEL_IN_THE_PLANE,
@@ -154,6 +189,7 @@ impl Job {
             What::Potential => potential::potential(&scene),
             What::Field => field::field(&scene, &level),
             What::Charge => charge::charge(&scene, &level),
+            What::Factors | What::Error => panic!("{:?} is a picture of a table", self.what),
         };
         Ok(match self.format {
             Format::Png => render::png(&sheet)?,

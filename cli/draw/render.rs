@@ -10,7 +10,7 @@ use plotters::coord::Shift;
 use plotters::drawing::{DrawingArea, IntoDrawingArea};
 use plotters::element::{PathElement, Polygon, Text};
 use plotters::style::text_anchor::{HPos, Pos, VPos};
-use plotters::style::{Color, FontTransform, IntoFont, IntoTextStyle, ShapeStyle};
+use plotters::style::{Color, FontTransform, IntoFont, IntoTextStyle, RGBColor, ShapeStyle};
 
 use super::sheet::{Anchor, Layer, Mark, Sheet};
 use super::theme;
@@ -107,22 +107,50 @@ pub fn escaped(text: &str) -> String {
 /// # Errors
 /// A mistake in the program.
 pub fn svg(sheet: &Sheet) -> Result<String, RenderError> {
-    theme::load_font();
     let [width, height] = sheet.size;
-    let units = sheet.size.map(|s| (s * SVG_UNITS).round() as u32);
     let title = escaped(&sheet.title);
-    let mut text = format!(
+    Ok(format!(
         "<svg xmlns=\"http://www.w3.org/2000/svg\" width=\"{width:.2}mm\" height=\"{height:.2}mm\" \
-         viewBox=\"0 0 {} {}\" role=\"img\" stroke-linejoin=\"round\" aria-label=\"{title}\">\n<title>{title}</title>\n\
-         <rect width=\"100%\" height=\"100%\" fill=\"#ffffff\"/>\n",
-        units[0], units[1]
-    );
-    for layer in &sheet.layers {
-        let body = svg_layer(layer, (units[0], units[1]))?;
-        let body = body.replace(" opacity=\"1\"", "").replace(" \"/>", "\"/>");
-        write!(text, "<g id=\"{}\">\n{body}</g>\n", escaped(&layer.name)).map_err(failed)?;
+         viewBox=\"{}\" role=\"img\" stroke-linejoin=\"round\" aria-label=\"{title}\">\n<title>{title}</title>\n\
+         <rect width=\"100%\" height=\"100%\" fill=\"#ffffff\"/>\n{}</svg>\n",
+        view_box(sheet),
+        svg_layers(sheet, "id")?
+    ))
+}
+
+/// An SVG that is a part of a page: as wide as there is room, in the ink of the page and on its ground.
+///
+/// # Errors
+/// A mistake in the program.
+pub fn svg_in_page(sheet: &Sheet, description: &str) -> Result<String, RenderError> {
+    let ink = |colour: RGBColor| format!("\"#{:02X}{:02X}{:02X}\"", colour.0, colour.1, colour.2);
+    let mut body = svg_layers(sheet, "class")?;
+    for colour in [theme::INK, theme::MIDDLE] {
+        body = body.replace(&ink(colour), "\"currentColor\"");
     }
-    text.push_str("</svg>\n");
+    let description = escaped(description);
+    Ok(format!(
+        "<svg viewBox=\"{}\" role=\"img\" stroke-linejoin=\"round\" aria-label=\"{description}\">\n\
+         <title>{description}</title>\n{body}</svg>\n",
+        view_box(sheet)
+    ))
+}
+
+fn view_box(sheet: &Sheet) -> String {
+    let [width, height] = sheet.size.map(|s| (s * SVG_UNITS).round() as u32);
+    format!("0 0 {width} {height}")
+}
+
+/// A group for each layer, its name in this attribute.
+fn svg_layers(sheet: &Sheet, attribute: &str) -> Result<String, RenderError> {
+    theme::load_font();
+    let [width, height] = sheet.size.map(|s| (s * SVG_UNITS).round() as u32);
+    let mut text = String::new();
+    for layer in &sheet.layers {
+        let body = svg_layer(layer, (width, height))?;
+        let body = body.replace(" opacity=\"1\"", "").replace(" \"/>", "\"/>");
+        write!(text, "<g {attribute}=\"{}\">\n{body}</g>\n", escaped(&layer.name)).map_err(failed)?;
+    }
     Ok(text)
 }
 

@@ -59,6 +59,14 @@ pub fn plane_m(arrangement: &Arrangement) -> f64 {
 }
 
 impl Outline {
+    /// The lower and the upper plate in the plane `y_m`, as far as they reach into it.
+    pub fn both(arrangement: &Arrangement, y_m: f64) -> [Option<Outline>; 2] {
+        [
+            Outline::new(&arrangement.lower, arrangement, false, y_m),
+            Outline::new(&arrangement.upper, arrangement, true, y_m),
+        ]
+    }
+
     fn new(plate: &Plate, arrangement: &Arrangement, upper: bool, y_m: f64) -> Option<Outline> {
         let level = tiltgap_meshes::Pose { tilt_rad: 0.0, roll_rad: 0.0, ..arrangement.pose };
         let r = if upper { arrangement.pose } else { level }.rotation();
@@ -101,10 +109,7 @@ impl<'a> Scene<'a> {
             points: section.points.iter().map(|p| p.map(|x| MM * size_m * x)).collect(),
             potential: section.potential(plates_v),
             plates_v,
-            outlines: [
-                Outline::new(&arrangement.lower, arrangement, false, y_m),
-                Outline::new(&arrangement.upper, arrangement, true, y_m),
-            ],
+            outlines: Outline::both(arrangement, y_m),
             nodes: [plate(level.grid.lower.plate()), plate(level.grid.upper.plate())],
             columns: columns[0].clone(),
         }

@@ -111,21 +111,26 @@ pub fn views(scene: &Scene, top: f64) -> (Vec<View>, f64) {
     (all, bottom)
 }
 
+/// A plate on the sheet, at least as thick as a stroke, away from the gap.
+pub fn drawn(outline: &Outline, place: impl Fn([f64; 2]) -> Point) -> [Point; 4] {
+    let mut corners = outline.corners.map(place);
+    // The sheet's y runs downwards.
+    let away = [outline.away[0], -outline.away[1]];
+    let [a, d] = [corners[0], corners[3]];
+    if (d[0] - a[0]).hypot(d[1] - a[1]) < theme::PLATE {
+        for (near, far) in [(1, 2), (0, 3)] {
+            corners[far] = [0, 1].map(|e| corners[near][e] + theme::PLATE * away[e]);
+        }
+    }
+    corners
+}
+
 /// The plates in every view: as thick as they are, a sheet as a stroke on its far side, so that the gap keeps its width.
 pub fn plates(sheet: &mut Sheet, scene: &Scene, views: &[View]) {
     sheet.layer("plates");
     for view in views {
         for outline in scene.outlines.iter().flatten() {
-            let mut corners = outline.corners.map(|c| view.panel.place(c));
-            // At least the thickness of a stroke, away from the gap; the sheet's y runs downwards.
-            let away = [outline.away[0], -outline.away[1]];
-            let [a, d] = [corners[0], corners[3]];
-            let thickness = (d[0] - a[0]).hypot(d[1] - a[1]);
-            if thickness < theme::PLATE {
-                for (near, far) in [(1, 2), (0, 3)] {
-                    corners[far] = [0, 1].map(|e| corners[near][e] + theme::PLATE * away[e]);
-                }
-            }
+            let corners = drawn(outline, |c| view.panel.place(c));
             sheet.area(view.panel.clip_area(&corners), theme::INK);
         }
     }

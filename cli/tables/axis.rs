@@ -12,7 +12,7 @@ const BISECTIONS: usize = 80;
 
 /// By which part of a range a value may miss its end: two ways of writing the same number differ by less, 0.008 m and
 /// 8 mm, or 1 deg and 17.45 mrad written with all digits.
-const ROUNDING: f64 = 1e-9;
+pub const ROUNDING: f64 = 1e-9;
 
 /// What varies along an axis.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
@@ -53,17 +53,46 @@ pub struct Span {
     pub to: f64,
 }
 
+impl Span {
+    /// `count` values from end to end, evenly spaced; the ends are met exactly.
+    pub fn evenly(&self, count: usize) -> Vec<f64> {
+        let last = (count - 1) as f64;
+        let inner = (0..count - 1).map(|n| self.from + (self.to - self.from) * (n as f64 / last));
+        inner.chain([self.to]).collect()
+    }
+}
+
 /// A monotonic function of the variable; its range is mapped to -1 to 1.
 #[derive(Clone, Copy, Debug, PartialEq)]
-enum Grading {
+pub enum Grading {
     /// ln(gap - drop), drop the height by which the lowest corner of all poses stands below the centre.
-    Above { drop_m: f64 },
+    Above {
+        /// The drop, in metres.
+        drop_m: f64,
+    },
     /// artanh(steepness x sin(angle)), 1/steepness the sine at which an edge would touch at the smallest gap.
-    Wedge { steepness: f64 },
+    Wedge {
+        /// The steepness.
+        steepness: f64,
+    },
     /// ln of the gap at a point of the beam: base + reach x sin(angle) - height x cos(angle).
-    Edge { base_m: f64, reach_m: f64, height_m: f64 },
+    Edge {
+        /// Height of the hinge above the lower plate, in metres.
+        base_m: f64,
+        /// Distance of the point from the hinge along the beam, in metres.
+        reach_m: f64,
+        /// Height of the hinge above the upper plate, in metres.
+        height_m: f64,
+    },
     /// The difference of two such logarithms, for a plate that reaches across the hinge.
-    Edges { base_m: f64, reach_m: [f64; 2], height_m: f64 },
+    Edges {
+        /// As in [`Grading::Edge`].
+        base_m: f64,
+        /// Of the far and of the near edge.
+        reach_m: [f64; 2],
+        /// As in [`Grading::Edge`].
+        height_m: f64,
+    },
 }
 
 impl Grading {
@@ -94,9 +123,10 @@ impl Grading {
 pub struct Axis {
     /// What varies, from where to where.
     pub span: Span,
-    grading: Grading,
+    /// The coordinate in which it is smooth.
+    pub grading: Grading,
     /// The grading at the two ends.
-    ends: [f64; 2],
+    pub ends: [f64; 2],
 }
 
 impl Axis {

@@ -39,6 +39,16 @@ impl Interpolant {
         Interpolant { nodes, values, quantities }
     }
 
+    /// The nodes along each axis, coordinates from -1 to 1.
+    pub fn nodes(&self) -> &[Vec<f64>] {
+        &self.nodes
+    }
+
+    /// Value and numerical uncertainty of one quantity at each node, the last axis fastest.
+    pub fn at_nodes(&self, quantity: usize) -> impl Iterator<Item = &[f64; 2]> {
+        self.values.iter().skip(quantity).step_by(self.quantities)
+    }
+
     /// The weights at a place, coordinates from -1 to 1.
     pub fn weights(&self, at: &[f64]) -> Weights {
         let bases: Vec<Vec<[f64; 2]>> = self.nodes.iter().zip(at).map(|(n, x)| basis(n, *x)).collect();
@@ -60,7 +70,7 @@ impl Interpolant {
     /// on the same levels and miss the truth alike. What they do not have in common makes the interpolant miss the check
     /// points, and is counted there.
     pub fn at(&self, weights: &Weights, quantity: usize) -> Interpolated {
-        let nodes = || self.values.iter().skip(quantity).step_by(self.quantities);
+        let nodes = || self.at_nodes(quantity);
         let sum = |w: &[f64]| w.iter().zip(nodes()).map(|(w, v)| w * v[0]).sum::<f64>();
         let (mut common, mut all) = (0.0, 0.0);
         for (w, [_, uncertainty]) in weights.of_node.iter().zip(nodes()) {

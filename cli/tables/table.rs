@@ -9,7 +9,7 @@ use super::space::Space;
 
 /// Step of the difference quotients of the closed formulas (ideal and lamellae), as a part of an axis: their error is the
 /// square of it, far below what a sensitivity has to be known to.
-const STEP: f64 = 1e-4;
+pub const STEP: f64 = 1e-4;
 
 /// Capacitance (and charge), force, torque: the order of everything that comes in threes.
 pub const NAMES: [&str; 3] = ["capacitance", "force", "torque"];
@@ -47,6 +47,13 @@ pub struct TableFactor {
     pub factor: Known,
     /// What the tilt alone makes of it.
     pub wedge: f64,
+}
+
+impl TableFactor {
+    /// Error of the ideal formula in per cent of the full value; negative if it gives too little.
+    pub fn error_percent(&self) -> f64 {
+        100.0 * (1.0 / self.factor.value - 1.0)
+    }
 }
 
 /// What was read, with standard uncertainties; SI units.
