@@ -410,18 +410,18 @@ pub struct HandoutArguments {
     #[arg(value_name = "TABLE")]
     pub table: PathBuf,
 
-    /// File to write, .html, .md, .tex or .csv [default: handout.html]; `-` is standard output.
+    /// File to write; `-` is standard output [default: handout.html].
     ///
     /// It appears whole or not at all; a file of that name is replaced.
     #[arg(long, short, value_name = "FILE", allow_hyphen_values = true)]
     pub output: Option<PathBuf>,
 
-    /// Format [default: by the file name].
-    #[arg(long, value_name = "FORMAT", value_enum)]
+    /// html, md, tex or csv [default: by the file name].
+    #[arg(long, value_name = "FORMAT", value_enum, hide_possible_values = true)]
     pub format: Option<HandoutFormat>,
 
-    /// Which factors, separated by commas [default: all].
-    #[arg(long, value_name = "QUANTITIES", value_enum, value_delimiter = ',')]
+    /// Some of capacitance,force,torque [default: all].
+    #[arg(long, value_name = "QUANTITIES", value_enum, value_delimiter = ',', hide_possible_values = true)]
     pub quantities: Vec<Factor>,
 }
 
@@ -458,8 +458,8 @@ pub struct DrawArguments {
     #[command(flatten)]
     pub bench: BenchArguments,
 
-    /// What to show.
-    #[arg(long, value_name = "WHAT", value_enum)]
+    /// potential, field or charge of a bench; factors or error of a table.
+    #[arg(long, value_name = "WHAT", value_enum, hide_possible_values = true)]
     pub what: What,
 
     /// File to write, .svg, .png or .vts; `-` is standard output.
@@ -472,8 +472,8 @@ pub struct DrawArguments {
     #[arg(long, value_name = "FORMAT", value_enum)]
     pub format: Option<Format>,
 
-    /// Which factor of a table [default: force].
-    #[arg(long, value_name = "QUANTITY", value_enum)]
+    /// Factor of a table: capacitance, force or torque [default: force].
+    #[arg(long, value_name = "QUANTITY", value_enum, hide_possible_values = true)]
     pub quantity: Option<Factor>,
 
     /// Level of the grid [default: 12 with --per-metre, else 6; 4 for a .vts].
