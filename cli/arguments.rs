@@ -7,8 +7,8 @@ use clap::{Args, Parser, Subcommand, ValueEnum};
 const EXIT_CODES: &str = "\
 Exit codes:
   0  good
-  1  the accuracy asked for was not reached, the calculation did not converge, or readings could
-     not be corrected
+  1  the accuracy asked for was not reached, the calculation did not converge, readings could
+     not be corrected, or a check of the validation failed
   2  bad input: the bench, an option or the arrangement of the plates
   3  internal error
   130  stopped by Ctrl-C; what was done is kept";
@@ -88,6 +88,21 @@ Examples:
   tiltgap apply table.json --at gap=3.2mm,tilt=0.4deg,voltage=250V
   tiltgap apply table.json --at gap=3.2mm,u_gap=5um,tilt=0.4deg,voltage=250V --json";
 
+const ABOUT_VALIDATE: &str = "\
+Can the numbers be trusted, how well, and where does the trust end? Four parts: the ideal limit
+(insulating walls, a guarded plate, an open pair with a shrinking gap), reference cases (closed
+forms, published values, independent computations), convergence and the error bars, and self checks
+on a bench: yours, or the demo bench.
+
+The last sentence is the verdict; the exit code is 1 if anything fails.";
+
+const VALIDATE_EXAMPLES: &str = "\
+Examples:
+  tiltgap validate                                the quick choice, on the demo bench
+  tiltgap validate --full bench.json --report validation.html
+  tiltgap validate --only strips-parallel --full --sources
+  tiltgap validate --only self-checks bench.json --tilt -2mrad";
+
 /// The whole command line.
 #[derive(Debug, Parser)]
 #[command(
@@ -124,6 +139,9 @@ pub enum Command {
     /// Show a table of correction factors.
     #[command(after_help = EXIT_CODES)]
     Table(TableArguments),
+    /// Hold the program against exact limits, reference cases and itself.
+    #[command(long_about = ABOUT_VALIDATE, after_help = EXIT_CODES, after_long_help = format!("{VALIDATE_EXAMPLES}\n\n{EXIT_CODES}"))]
+    Validate(ValidateArguments),
     /// Print the JSON Schema of the bench file, for editors.
     Schema,
     /// Print the demo bench file, to begin with.
@@ -198,6 +216,38 @@ pub struct AssessArguments {
     /// Write JSON in SI units instead of tables.
     #[arg(long)]
     pub json: bool,
+}
+
+/// Arguments of `validate`.
+#[derive(Clone, Debug, Default, Args)]
+pub struct ValidateArguments {
+    /// The bench.
+    #[command(flatten)]
+    pub bench: BenchArguments,
+
+    /// A choice of the cases, in seconds [the default].
+    #[arg(long, conflicts_with = "full")]
+    pub quick: bool,
+
+    /// All cases that the program solves, in minutes.
+    #[arg(long)]
+    pub full: bool,
+
+    /// One part (ideal-limit, references, convergence, self-checks) or one family of cases.
+    #[arg(long, value_name = "NAME")]
+    pub only: Option<String>,
+
+    /// Name the sources of the reference values.
+    #[arg(long)]
+    pub sources: bool,
+
+    /// Write JSON instead of tables.
+    #[arg(long)]
+    pub json: bool,
+
+    /// Write the whole report to a file, .html or .md; it appears whole or not at all.
+    #[arg(long, value_name = "FILE")]
+    pub report: Option<PathBuf>,
 }
 
 /// Arguments of `tabulate`.

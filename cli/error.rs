@@ -16,6 +16,7 @@ use crate::readings::ReadingsError;
 use crate::store::StoreError;
 use crate::tables::error::TableError;
 use crate::tabulate::TabulateError;
+use crate::validate::ValidateError;
 
 /// Exit code of a run that did what was asked for.
 pub const GOOD: u8 = 0;
@@ -101,6 +102,12 @@ pub enum Error {
         /// Of how many.
         all: usize,
     },
+    /// The options of a validation are at fault.
+    #[error(transparent)]
+    Validate(#[from] ValidateError),
+    /// A validation found something that does not hold.
+    #[error("the validation fails, see its verdict")]
+    NotValid,
     /// The table has no such factor.
     #[error(
         "the bench of this table has no hinge, and so no factor of the torque; choose capacitance or force"
@@ -220,7 +227,8 @@ impl Error {
             Error::Solver(Solver::Arrangement(_) | Solver::Question(_)) => BAD_INPUT,
             Error::Solver(Solver::NotConverged { .. } | Solver::AccuracyNotReached { .. }) => NOT_REACHED,
             Error::Pose { error, .. } => error.exit_code(),
-            Error::NotInterpolated { .. } | Error::Rows { .. } => NOT_REACHED,
+            Error::NotInterpolated { .. } | Error::Rows { .. } | Error::NotValid => NOT_REACHED,
+            Error::Validate(_) => BAD_INPUT,
             Error::Apply(_) | Error::Readings(_) | Error::NoTorque => BAD_INPUT,
             Error::Range(_) | Error::Tabulate(_) | Error::Table(_) | Error::Store(_) => BAD_INPUT,
             Error::Differs { .. } | Error::Occupied { .. } | Error::Locked { .. } => BAD_INPUT,

@@ -38,6 +38,7 @@ pub mod table;
 pub mod table_job;
 pub mod tables;
 pub mod tabulate;
+pub mod validate;
 
 use std::ffi::OsString;
 use std::io::{Read, Write};
@@ -130,6 +131,11 @@ fn command(command: &Command, streams: &mut Streams, begun: Instant) -> Result<(
             return if failed == 0 { Ok(()) } else { Err(Error::Rows { failed, all }) };
         }
         Command::Table(arguments) => show::show(arguments, streams.stdin)?,
+        Command::Validate(arguments) => {
+            let job = validate::Job::new(arguments, streams.stdin)?;
+            let holds = validate::validate(&job, arguments, streams, begun)?;
+            return if holds { Ok(()) } else { Err(Error::NotValid) };
+        }
         Command::Schema => format!("{:#}\n", schema::bench_schema()),
         Command::Demo => source::DEMO.into(),
     };

@@ -3,7 +3,7 @@
     python check.py
 
 * against schema.json; file name = family; names of cases unique; every value defined under `quantities`, with an
-  uncertainty or spread of the same shape; scripts present; every [Key] of the files, the
+  uncertainty or spread of the same shape; quick cases and scripts present; every [Key] of the files, the
   scripts and the Rust sources in bibliography.md, every entry there used
 * strips-parallel, discs, pull-in, wedge-ideal, disc-wedge, cross-capacitance, guard-gaps and closed-domains in full, with
   a second route to the wedge formulas, of strips and of discs, and to the rectangle
@@ -59,6 +59,9 @@ def problems(family, doc):
     for key in doc.get("kinds", {}):
         if key not in doc["quantities"]:
             yield f"kind of an unknown quantity {key}"
+    for name in doc.get("quick", []):
+        if name not in names:
+            yield f"quick case {name} is not there"
     for script in doc["scripts"]:
         if not os.path.exists(os.path.join(store.FOLDER, "scripts", script)):
             yield f"no script {script}"

@@ -30,7 +30,7 @@ const OUTSIDE_SETTLES: f64 = 3.0;
 const COARSE_FLOOR: f64 = 3e-5;
 /// Relative uncertainty that is always there: far boundary, solver tolerance, rounding. Measured on strips at the
 /// finest levels, where nothing else is left.
-const FLOOR: f64 = 1e-6;
+pub const FLOOR: f64 = 1e-6;
 /// Part of the largest component of a vector's uncertainty that every component carries at least, and of the force's
 /// uncertainty that a torque carries (times the size): they are made from the same field, and a small number that
 /// happens to agree between levels is not a known one.

@@ -33,7 +33,7 @@ pub use assess::{
 pub use cells::cell_field;
 pub use error::Error;
 pub use extrapolate::{extrapolate, observed_order, Limit};
-pub use family::BYTES_PER_NODE;
+pub use family::{BYTES_PER_NODE, FLOOR};
 pub use field::Field;
 pub use level::{Level, LevelParams, Profile};
 pub use operator::{Matrix, Operator};
