@@ -102,7 +102,7 @@ fn climb(
     ])
 }
 
-/// Ladders of two exact cases in the plane, and of a tilted, rolled pair in space with a reference.
+/// Ladders of two exact cases in the plane, and of a tilted pair in space with a reference.
 ///
 /// # Errors
 /// What the solver says.
@@ -117,7 +117,7 @@ pub fn ladders(full: bool) -> Result<Vec<Ladder>, Error> {
         all.extend(climb(&title, &bench, Connection::Floating, &PLANE, exact)?);
     }
     let plates = Family::named("plates");
-    for name in ["gap 0.05 tilt 1 roll 0.5"] {
+    for name in ["gap 0.1 tilt 5"] {
         let Some(case) = plates.cases.iter().find(|c| c.name() == name) else { continue };
         let bench = posed_plates::placed(case);
         let levels = if full { &SPACE[..] } else { &SPACE[..FEW] };

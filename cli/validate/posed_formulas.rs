@@ -1,6 +1,6 @@
-//! Families that are formulas of the program itself: what the tilt alone does.
+//! Families that are formulas of the program itself: what the tilt alone does, and the permittivity of vacuum.
 
-use tiltgap_solver::{wedge_factors, Estimate};
+use tiltgap_solver::{wedge_factors, Estimate, EPS0};
 
 use super::cases::Family;
 use super::comparison::{Held, Sort};
@@ -37,3 +37,23 @@ pub(super) fn wedge_ideal(family: &Family) -> Vec<Trial<'_>> {
         })
         .collect()
 }
+
+/// The permittivity that the solver uses, as the capacitance that a standard realises with it.
+pub(super) fn vacuum(family: &Family) -> Vec<Trial<'_>> {
+    let posed = family.cases.iter().filter(|case| case.name() == VACUUM);
+    posed
+        .map(|case| {
+            let solve = move |_| {
+                let value = EPS0 * std::f64::consts::LN_2 / std::f64::consts::PI;
+                let computed = Estimate { value, uncertainty: 0.0 };
+                let held = Held { family, case };
+                let compared = held.plain("cross_capacitance", Sort::Charge, computed);
+                Ok(vec![super::comparison::Comparison { solved: false, ..compared }])
+            };
+            Trial::new(family, case, Box::new(solve))
+        })
+        .collect()
+}
+
+/// The case with the constant that the program uses.
+const VACUUM: &str = "equal, eps0 of CODATA 2022";

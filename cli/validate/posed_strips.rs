@@ -62,7 +62,10 @@ pub(super) fn strips(family: &Family) -> Vec<Trial<'_>> {
 /// The hinge of a wedge is its apex.
 pub(super) fn wedges(family: &Family) -> Vec<Trial<'_>> {
     let posed = family.cases.iter().filter(|case| case.geometry("opening_deg") <= WIDEST_OPENING);
-    let posed = posed.filter(|case| in_reach(&placed(case, "placement")));
+    let posed = posed.filter(|case| {
+        let bench = placed(case, "placement");
+        in_reach(&bench) && bench.pose.gap_m <= bench.size_m()
+    });
     posed
         .map(|case| {
             let solve = move |accuracy| {

@@ -34,17 +34,17 @@ pub(super) fn striplines(family: &Family) -> Vec<Trial<'_>> {
 
 /// A square box of half side S acts like a circle of radius 1.0787 S on a neutral pair (`truncation.json`).
 const CIRCLE_OF_A_SQUARE: f64 = 1.0787;
-/// Radii, in lengths of the strips, from which on the leading term is all there is.
-const NEAREST_CIRCLE: f64 = 5.0;
+/// Radii, in gaps, from which on the leading term is nearly all there is.
+const NEAREST_CIRCLE: f64 = 10.0;
 /// Gaps, in lengths, whose excess can be seen at the accuracy of a capacitance.
 const NARROWEST_PAIR: f64 = 0.5;
 
 /// A grounded box around a neutral pair: by how much the charge exceeds that in free space, which is 1.
 pub(super) fn boxes(family: &Family) -> Vec<Trial<'_>> {
-    let posed = family
-        .cases
-        .iter()
-        .filter(|case| case.geometry("radius") >= NEAREST_CIRCLE && case.geometry("gap") >= NARROWEST_PAIR);
+    let posed = family.cases.iter().filter(|case| {
+        case.geometry("radius") >= NEAREST_CIRCLE * case.geometry("gap")
+            && case.geometry("gap") >= NARROWEST_PAIR
+    });
     posed
         .map(|case| {
             let solve = move |accuracy: f64| {
@@ -66,7 +66,9 @@ pub(super) fn boxes(family: &Family) -> Vec<Trial<'_>> {
                 let ratio = boxed.value / free.value;
                 let relative = (free.uncertainty / free.value).hypot(boxed.uncertainty / boxed.value);
                 let excess = Estimate { value: ratio - 1.0, uncertainty: ratio * relative };
-                let reference = [case.value("leading_term"), case.open("leading_term")].map(number);
+                // What the leading term leaves out is taken to be as large as it is for the circle.
+                let [leading, whole] = ["leading_term", "grounded"].map(|key| number(case.value(key)));
+                let reference = [leading, (whole - leading).abs()];
                 let name = ("excess in a box over free space", "leading_term");
                 Ok(vec![Held { family, case }.number(name, Sort::Charge, excess, reference, 1.0)])
             };

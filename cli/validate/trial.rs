@@ -63,6 +63,7 @@ pub fn trials(family: &Family) -> Vec<Trial<'_>> {
         "wedge-squares" => posed_plates::wedges,
         "isolated" => posed_plates::isolated,
         "wedge-ideal" => posed_formulas::wedge_ideal,
+        "cross-capacitance" => posed_formulas::vacuum,
         _ => return Vec::new(),
     };
     pose(family)
