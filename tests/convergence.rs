@@ -1,9 +1,10 @@
 //! The order of convergence, by slope fit, on a tilted pair of unequal strips whose answer is exact.
 
+use tiltgap::validate::cases::{number, Family};
 use tiltgap_meshes::GridOptions;
 use tiltgap_solver::{Level, LevelParams};
 
-use crate::cases::{family, name, number, strips};
+use crate::cases::strips;
 
 /// Slope of ln(error) over ln(1/q), by least squares.
 fn slope(points: &[(f64, f64)]) -> f64 {
@@ -17,12 +18,11 @@ fn slope(points: &[(f64, f64)]) -> f64 {
 #[test]
 fn charge_force_and_torque_are_of_second_order() {
     // Graded knife edges give second order back; on a uniform grid they would leave first order.
-    let cases = family("strips");
+    let cases = Family::named("strips").cases;
     let case =
-        cases.iter().find(|c| name(c) == "unequal upper 0.8 shift 0.1 gap 0.05 tilt -2").expect("the case");
+        cases.iter().find(|c| c.name() == "unequal upper 0.8 shift 0.1 gap 0.05 tilt -2").expect("the case");
     let arrangement = strips(case);
     let options = GridOptions::suited(&arrangement);
-    let value = &case["value"];
     let mut errors: [Vec<(f64, f64)>; 3] = Default::default();
     for q in [4, 6, 8, 12] {
         let level =
@@ -31,7 +31,7 @@ fn charge_force_and_torque_are_of_second_order() {
         let wrench = level.wrench(potential);
         let charge = level.matrix[1][0] * potential[0] + level.matrix[1][1] * potential[1];
         let computed = [charge, wrench.force[2], wrench.torque[1]];
-        let exact = ["capacitance", "force_z", "torque_y"].map(|key| number(&value[key]));
+        let exact = ["capacitance", "force_z", "torque_y"].map(|key| number(case.value(key)));
         for n in 0..3 {
             errors[n].push((q as f64, (computed[n] / exact[n] - 1.0).abs()));
         }

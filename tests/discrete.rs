@@ -4,7 +4,8 @@
 use tiltgap_meshes::{GridOptions, Sideways};
 use tiltgap_solver::{cg, Error, Level, LevelParams};
 
-use crate::cases::{family, name, number, plates, triple};
+use tiltgap::validate::cases::{number, triple, Family};
+use tiltgap::validate::posed_plates::placed;
 
 /// The grid family of the reference implementation.
 const PLAIN: GridOptions = GridOptions { sideways: Sideways::Linear, far: 20.0 };
@@ -16,17 +17,17 @@ fn tight() -> LevelParams {
 #[test]
 fn levels_agree_with_the_reference_implementation() {
     let mut agreed = 0;
-    for case in family("levels") {
-        let arrangement = plates(&case);
-        let q = number(&case["level"]) as usize;
+    for case in Family::named("levels").cases {
+        let arrangement = placed(&case);
+        let q = number(&case.0["level"]) as usize;
         let level = Level::solve(&arrangement, &PLAIN, q, None, &tight(), &mut |_, _| {}).unwrap();
-        assert_eq!(level.grid.nodes(), number(&case["nodes"]) as usize);
-        let value = &case["value"];
+        assert_eq!(level.grid.nodes(), number(&case.0["nodes"]) as usize);
+        let value = &case.0["value"];
         // The grid measures in units of the larger plate, the reference in units of the lower one.
         let size = arrangement.size_m();
         let close = |what: &str, computed: f64, reference: f64, scale: f64| {
             let relative = (computed - reference).abs() / scale;
-            assert!(relative < 1e-7, "{} {what}: {computed} for {reference}", name(&case));
+            assert!(relative < 1e-7, "{} {what}: {computed} for {reference}", case.name());
         };
         for i in 0..2 {
             for j in 0..2 {
@@ -52,8 +53,8 @@ fn levels_agree_with_the_reference_implementation() {
 
 #[test]
 fn iterations_do_not_depend_on_the_level_and_a_coarse_level_helps() {
-    let case = &family("plates")[1];
-    let arrangement = plates(case);
+    let case = &Family::named("plates").cases[1];
+    let arrangement = placed(case);
     let options = GridOptions::suited(&arrangement);
     let solve = |q: usize, coarse: Option<&Level>| {
         Level::solve(&arrangement, &options, q, coarse, &LevelParams::default(), &mut |_, _| {}).unwrap()
@@ -71,7 +72,7 @@ fn iterations_do_not_depend_on_the_level_and_a_coarse_level_helps() {
 
 #[test]
 fn not_converged_is_an_error_with_the_numbers() {
-    let arrangement = plates(&family("plates")[1]);
+    let arrangement = placed(&Family::named("plates").cases[1]);
     let params =
         LevelParams { outer: cg::Params { tolerance: 1e-9, most_iterations: 3 }, ..Default::default() };
     match Level::solve(&arrangement, &PLAIN, 2, None, &params, &mut |_, _| {}) {

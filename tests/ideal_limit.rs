@@ -1,6 +1,7 @@
 //! Down to the ideal capacitor: insulating walls make the factors exactly one, and in open space they approach one
 //! with the published slopes.
 
+use tiltgap::validate::ideal;
 use tiltgap_meshes::{Arrangement, Dimensions, Plate, Pose, Surroundings};
 use tiltgap_solver::{assess, Connection, Hinge, Params, Question};
 
@@ -36,20 +37,13 @@ fn insulating_walls_make_the_factors_one() {
 
 #[test]
 fn strips_approach_one_with_the_published_slopes() {
-    // Palmer, Electrical Engineering 56, 363 (1937), from memory, and the closed form of the force factor that follows
-    // from Love's map (reference-cases/strips-parallel.json): k_C = 1 + delta/pi (1 + ln(2 pi/delta)), k_F = 1 +
-    // delta/pi; at delta = 0.005 their own error is below 3e-5.
-    let pi = std::f64::consts::PI;
-    let mut before = [f64::INFINITY; 2];
-    for delta in [0.02, 0.01, 0.005] {
-        let [k_c, k_f, _] =
-            factors(bench(Surroundings::Open, Dimensions::Two, 0.1 * delta), Connection::Floating);
-        let excess = [delta / pi * (1.0 + (2.0 * pi / delta).ln()), delta / pi];
-        let slope = [(k_c - 1.0) / excess[0], (k_f - 1.0) / excess[1]];
-        let limit = 2.0 * delta;
-        assert!(slope.iter().all(|s| (s - 1.0).abs() < limit), "{delta}: {slope:?}");
-        assert!(k_c - 1.0 < before[0] && k_f - 1.0 < before[1] && k_f > 1.0);
-        before = [k_c - 1.0, k_f - 1.0];
+    let all = ideal::approach().unwrap();
+    assert!(all.len() == 9 && all.iter().all(|a| a.holds()), "{all:?}");
+    for gaps in all.chunks(3) {
+        for pair in gaps.windows(2) {
+            assert!((0..2).all(|n| pair[1].fringe_percent[n] < pair[0].fringe_percent[n]), "{pair:?}");
+            assert!(pair[1].fringe_percent[1] > 0.0);
+        }
     }
 }
 

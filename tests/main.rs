@@ -17,5 +17,6 @@ mod strips;
 mod tables;
 mod thick;
 mod threads;
+mod validate;
 mod walls;
 mod wrench;

@@ -130,7 +130,7 @@ impl Comparison {
     }
 
     /// The normalised error E_n: the difference over the root sum of squares of the two expanded uncertainties
-    /// \[ISO13528\]. What is exactly right is 0.
+    /// \[ISO2022\]. What is exactly right is 0.
     pub fn normalised(&self) -> f64 {
         let off = self.difference();
         if off == 0.0 {

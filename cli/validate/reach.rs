@@ -11,6 +11,8 @@ const STEPS: usize = 4;
 const STEP: f64 = 0.5;
 /// Halvings of a bisection: to a part in a million.
 const HALVINGS: usize = 40;
+/// Steps to contact among which the first tilt that is too much is looked for.
+const SCAN: usize = 1000;
 
 /// What the ideal formula needs.
 #[derive(Clone, Debug, PartialEq)]
@@ -56,7 +58,11 @@ fn tilt_for(question: &Question, which: usize, part: f64) -> f64 {
         let factors = wedge_factors(&a).map(|w| [w.capacitance, w.force, w.torque(arm)][which]);
         factors.filter(|_| a.narrowness() > 0.0).map_or(f64::INFINITY, |f| (f - 1.0).abs())
     };
-    let (mut low, mut high) = (0.0, (2.0 * arrangement.pose.gap_m / arrangement.upper.length_m).atan());
+    // The torque falls below its ideal value first and comes back later: the first way out counts.
+    let contact = (2.0 * arrangement.pose.gap_m / arrangement.upper.length_m).atan();
+    let at = |n: usize| contact * n as f64 / SCAN as f64;
+    let out = (1..SCAN).find(|n| off(at(*n)) > part).unwrap_or(SCAN);
+    let (mut low, mut high) = (at(out - 1), at(out));
     for _ in 0..HALVINGS {
         let middle = 0.5 * (low + high);
         if off(middle) <= part {
@@ -96,6 +102,24 @@ pub fn reach(question: &Question, params: &Params) -> Result<Vec<Reach>, Error> 
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn the_first_tilt_that_is_too_much_counts() {
+        let plate = tiltgap_meshes::Plate { length_m: 0.11, width_m: 0.09, thickness_m: 0.0 };
+        let pose = tiltgap_meshes::Pose { gap_m: 0.004, tilt_rad: 0.0, roll_rad: 0.0, shift_m: [0.0; 2] };
+        let question = Question {
+            arrangement: Arrangement::open(plate, plate, pose, tiltgap_meshes::Dimensions::Three),
+            hinge: Some(tiltgap_solver::Hinge { arm_m: 0.15, height_m: 0.0 }),
+            connection: tiltgap_solver::Connection::Floating,
+            voltage_v: 1.0,
+            relative_permittivity: 1.0,
+        };
+        // k_F = 1/(1 - beta^2) and, to first order, k_T = 1 - length/(3 arm) beta, beta = length tilt/(2 gap).
+        let beta = |which, part| tilt_for(&question, which, part).tan() * 0.055 / 0.004;
+        assert!((beta(1, 1e-2) - (1.0 - 1.0 / 1.01f64).sqrt()).abs() < 1e-9);
+        assert!((beta(2, 1e-3) * 0.11 / 0.45 / 1e-3 - 1.0).abs() < 0.05);
+        assert!(beta(2, 1e-2) > beta(2, 1e-3));
+    }
 
     #[test]
     fn a_power_of_the_gap_is_followed_between_the_points_and_beyond() {

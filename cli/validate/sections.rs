@@ -27,7 +27,7 @@ pub struct Detail {
 const MM: f64 = 1e3;
 const MRAD: f64 = 1e3;
 /// Significant digits of what a bench needs.
-const NEEDED_DIGITS: usize = 3;
+const NEEDED_DIGITS: usize = 2;
 /// Decimals of an exact value and of a level.
 const EXACT_DECIMALS: usize = 8;
 
