@@ -76,14 +76,14 @@ fn one_family_alone() {
 fn the_self_checks_are_those_of_the_bench_given_and_titles_are_escaped() {
     let folder = tempfile::tempdir().unwrap();
     let title = "<script>alert(1)</script> [x](y) | z";
-    for (name, forbidden) in [("a.html", "<script"), ("a.md", "](y)")] {
+    for (name, forbidden) in [("a.html", "<script"), ("a.md", "[x](y)")] {
         let path = folder.path().join(name);
         let arguments = ["-", "--per-metre", "--only", "self-checks", "--report", path.to_str().unwrap()];
         let (code, out, err) = run(&arguments, &bench(title));
         assert_eq!(code, 0, "{out}\n{err}");
         assert!(out.contains("reciprocity") && out.lines().all(|l| l.chars().count() <= 100), "{out}");
         let text = std::fs::read_to_string(&path).unwrap();
-        assert!(text.contains("alert(1)") || text.contains("alert(1)".replace('(', "\\(").as_str()));
+        assert!(text.contains("alert(1)"), "{text}");
         assert!(!text.contains(forbidden), "{text}");
     }
 }

@@ -9,13 +9,16 @@ use super::convergence::{Coverage, Ladder};
 
 /// Height of a panel, in mm.
 const HEIGHT: f64 = 72.0;
+/// More room to the left for powers of ten, in mm.
+const POWERS: f64 = 4.0;
 /// Errors below this are the far boundary and rounding.
 const LEAST_ERROR: f64 = 1e-7;
 /// Standard uncertainties up to which the coverage is drawn.
 const WIDEST: f64 = 4.0;
 
 fn panel(top: f64, x: Scale, y: Scale) -> Panel {
-    Panel { corner: [LEFT, top], size: [theme::WIDTH - LEFT - RIGHT, HEIGHT], x, y }
+    let left = LEFT + if y.spread == Spread::Logarithmic { POWERS } else { 0.0 };
+    Panel { corner: [left, top], size: [theme::WIDTH - left - RIGHT, HEIGHT], x, y }
 }
 
 /// Relative errors over the level, both by their logarithm.
