@@ -159,7 +159,8 @@ mod tests {
             .filter(|name| name != "schema")
             .collect();
         let mut here: Vec<String> = FILES.iter().map(|(name, _)| (*name).into()).collect();
-        (there.sort(), here.sort());
+        there.sort();
+        here.sort();
         assert_eq!(there, here);
         for family in Family::all() {
             assert!(family.target.is_some() || family.waiting.is_some(), "{}", family.name);
