@@ -324,8 +324,8 @@ fn a_closed_pipe_is_no_failure() {
     assert_eq!((output.status.code(), output.stderr.len()), (Some(0), 0));
 }
 
-/// Runs inside this process, which is quicker; the streams are the same.
-fn within(arguments: &[&str], mut stdin: &[u8]) -> (u8, String, String) {
+/// Runs inside this process, which is quicker; the streams are the same: exit code, standard output, standard error.
+pub fn within(arguments: &[&str], mut stdin: &[u8]) -> (u8, String, String) {
     let (mut stdout, mut stderr) = (Vec::new(), Vec::new());
     let mut streams =
         tiltgap::Streams { stdin: &mut stdin, stdout: &mut stdout, stderr: &mut stderr, terminal: false };

@@ -8,7 +8,8 @@ use roxmltree::Document;
 use serde_json::{json, Value};
 use sha2::{Digest, Sha256};
 
-use crate::tables::{within, Scratch};
+use crate::cli::within;
+use crate::tables::Scratch;
 
 /// A quick table over gap and tilt per metre of width, printed 9 x 7, with this title.
 fn made(scratch: &Scratch, title: &str, more: &[&str]) -> String {

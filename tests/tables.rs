@@ -10,6 +10,8 @@ use tiltgap::store::{Format, Stored};
 use tiltgap::tables::table::Table;
 use tiltgap_solver::{assess, Params};
 
+use crate::cli::within;
+
 /// A directory of its own for a test, removed at the end.
 pub struct Scratch(PathBuf);
 
@@ -29,16 +31,6 @@ impl Drop for Scratch {
     fn drop(&mut self) {
         let _ = std::fs::remove_dir_all(&self.0);
     }
-}
-
-/// Runs inside this process: exit code, standard output, standard error.
-pub fn within(arguments: &[&str], mut stdin: &[u8]) -> (u8, String, String) {
-    let (mut stdout, mut stderr) = (Vec::new(), Vec::new());
-    let mut streams =
-        tiltgap::Streams { stdin: &mut stdin, stdout: &mut stdout, stderr: &mut stderr, terminal: false };
-    let all = ["tiltgap"].iter().chain(arguments).copied();
-    let code = tiltgap::run(all, &mut streams, Instant::now());
-    (code, String::from_utf8(stdout).unwrap(), String::from_utf8(stderr).unwrap())
 }
 
 fn tabulated(scratch: &Scratch, arguments: &[&str]) -> (Table, f64) {
